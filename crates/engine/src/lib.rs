@@ -1,0 +1,12 @@
+//! The engine of Evenfall: from a brief to a sized class-E power stage.
+//!
+//! Plain data in, plain data out; SI units and `f64` throughout; no browser, no clock,
+//! no input or output. The same design gives the same digits natively and in WebAssembly.
+//!
+//! Layers, each knowing only those above it:
+//! [`quantity`] → [`circuit`] → [`dynamics`] → [`orbit`] → [`design`] → [`stage`] →
+//! [`sizing`] → [`exchange`].
+#![forbid(unsafe_code)]
+
+pub mod answer;
+pub mod design;

@@ -1,0 +1,3 @@
+//! Set-up, serve and test.
+
+fn main() {}
