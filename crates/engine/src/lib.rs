@@ -9,4 +9,9 @@
 #![forbid(unsafe_code)]
 
 pub mod answer;
+pub mod circuit;
 pub mod design;
+pub mod dynamics;
+pub mod orbit;
+pub mod sizing;
+pub mod stage;

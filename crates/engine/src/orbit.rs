@@ -1,0 +1,160 @@
+//! The periodic steady state, without time stepping.
+//!
+//! Between events a stage is linear, so its solution is a matrix exponential ([`flow`]).
+//! [`solve`] finds the state that repeats after one period by Newton's method on the
+//! period map, whose derivative is exact, the instants at which diodes start and stop
+//! included; [`meter`] reads means, products, peaks and spectra off the solution.
+
+mod flow;
+mod meter;
+mod shoot;
+
+use crate::circuit::Circuit;
+use crate::dynamics::DynamicsError;
+use num_complex::Complex64;
+use std::fmt;
+
+/// What can be read off a solved circuit.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Probe {
+    /// Voltage of a branch, volts.
+    Voltage(usize),
+    /// Current of a branch, amperes.
+    Current(usize),
+}
+
+/// A stretch of the period with fixed switches.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct ClockStep {
+    /// How long, seconds.
+    pub duration_s: f64,
+    /// The switches that the clock closes, as bits of [`Circuit::switching_branches`].
+    pub closed: u32,
+}
+
+/// Lowest and highest value over the period, and when.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Extremes {
+    /// Lowest value.
+    pub least: f64,
+    /// When, seconds from the start of the period.
+    pub least_at_s: f64,
+    /// Highest value.
+    pub greatest: f64,
+    /// When, seconds from the start of the period.
+    pub greatest_at_s: f64,
+}
+
+/// Why there is no periodic state.
+#[derive(Debug, Clone, PartialEq)]
+pub enum OrbitError {
+    /// The circuit has no equations.
+    Dynamics(DynamicsError),
+    /// More states than the solver holds.
+    TooManyStates {
+        /// States of the circuit.
+        states: usize,
+        /// The most it holds.
+        most: usize,
+    },
+    /// A clock step of no or unending duration.
+    Clock {
+        /// The duration at fault, seconds.
+        duration_s: f64,
+    },
+    /// A state neither decays nor is driven: no single periodic state exists.
+    Undetermined,
+    /// Diodes start and stop without end within one clock step.
+    Chatter {
+        /// Events counted before giving up.
+        events: usize,
+    },
+    /// Newton's method did not settle.
+    NotConverged {
+        /// Iterations made.
+        iterations: usize,
+        /// Largest change of a state over the period, relative to that state.
+        residual: f64,
+    },
+    /// The numbers left the range of double precision.
+    Overflow,
+}
+
+impl fmt::Display for OrbitError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::Dynamics(error) => error.fmt(f),
+            Self::TooManyStates { states, most } => {
+                write!(f, "the circuit has {states} states, more than the {most} that the solver holds")
+            }
+            Self::Clock { duration_s } => write!(f, "a clock step of {duration_s} s cannot be solved"),
+            Self::Undetermined => {
+                write!(f, "no single steady state exists: some charge or current neither decays nor is driven")
+            }
+            Self::Chatter { events } => {
+                write!(f, "a diode started and stopped more than {events} times within one clock step")
+            }
+            Self::NotConverged { iterations, residual } => write!(
+                f,
+                "the steady state did not settle in {iterations} iterations (relative change {residual:.1e} a period)"
+            ),
+            Self::Overflow => write!(f, "the values are too far apart for double precision"),
+        }
+    }
+}
+
+impl std::error::Error for OrbitError {}
+
+impl From<DynamicsError> for OrbitError {
+    fn from(error: DynamicsError) -> Self {
+        Self::Dynamics(error)
+    }
+}
+
+/// A solved periodic state. The period starts with the first clock step.
+pub trait Orbit {
+    /// The period, seconds.
+    fn period_s(&self) -> f64;
+    /// Newton iterations that it took.
+    fn iterations(&self) -> usize;
+    /// Number of stretches between events.
+    fn pieces(&self) -> usize;
+    /// Mean of the product of two quantities (of one with itself: its mean square).
+    fn mean_product(&self, first: Probe, second: Probe) -> f64;
+    /// Mean of a quantity.
+    fn mean(&self, probe: Probe) -> f64;
+    /// Lowest and highest value.
+    fn extremes(&self, probe: Probe) -> Extremes;
+    /// Complex Fourier coefficients 0..=count: mean of x(t) exp(-j k w t).
+    fn harmonics(&self, probe: Probe, count: usize) -> Vec<Complex64>;
+    /// Value and slope (per second) just before the period ends.
+    fn before_end(&self, probe: Probe) -> (f64, f64);
+    /// `count + 1` samples at equal steps from the period's start to its end.
+    fn samples(&self, probe: Probe, count: usize) -> Vec<f64>;
+    /// Fraction of the period in which a switching branch conducts.
+    fn conducting_fraction(&self, branch: usize) -> f64;
+    /// Energy that charge lost in jumps at the clock's instants in one period, joules
+    /// (only ideal switches make jumps).
+    fn jump_energy_j(&self) -> f64;
+}
+
+/// The most states that [`solve`] takes.
+pub const MOST_STATES: usize = 16;
+
+/// The periodic steady state of `circuit` under the clock.
+///
+/// # Errors
+/// See [`OrbitError`].
+pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, OrbitError> {
+    let (capacitors, inductors) = circuit.state_branches();
+    let states = capacitors.len() + inductors.len();
+    macro_rules! sized {
+        ($($n:literal),*) => {
+            match states + 1 {
+                $(n if n <= $n => Ok(Box::new(shoot::solve::<$n>(circuit, clock)?) as Box<dyn Orbit>),)*
+                _ => Err(OrbitError::TooManyStates { states, most: MOST_STATES }),
+            }
+        };
+    }
+    sized!(5, 6, 7, 9, 12, 17)
+}

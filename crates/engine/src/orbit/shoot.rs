@@ -1,0 +1,373 @@
+//! Newton's method on the period map.
+
+use super::flow::{Flow, Square, State, first_fall};
+use super::{ClockStep, OrbitError};
+use crate::circuit::{Circuit, Element};
+use crate::dynamics;
+use nalgebra::{Const, DimMin};
+use std::cell::OnceCell;
+
+const MOST_ITERATIONS: usize = 60;
+/// Iterations after which plain periods are mixed in to leave a cycle.
+const CALM_AFTER: usize = 15;
+const MOST_EVENTS: usize = 64;
+/// A state that repeats to this, relative to its size, has settled.
+const SETTLED: f64 = 1e-13;
+/// What is accepted when rounding keeps Newton from settling fully.
+const ACCEPTED: f64 = 1e-10;
+/// Rounding of a guard, relative to its largest term.
+const GUARD_ROUNDING: f64 = 1e-12;
+
+/// The equations of one conduction set, in fixed size.
+pub(super) struct SizedMode<const N: usize> {
+    pub(super) conducting: u32,
+    pub(super) a: Square<N>,
+    pub(super) project: Option<Square<N>>,
+    pub(super) voltage: Vec<State<N>>,
+    pub(super) current: Vec<State<N>>,
+}
+
+/// A stretch between events.
+#[derive(Clone)]
+pub(super) struct Piece<const N: usize> {
+    pub(super) mode: usize,
+    pub(super) start_s: f64,
+    pub(super) duration_s: f64,
+    pub(super) start: State<N>,
+    pub(super) end: State<N>,
+    pub(super) flow: usize,
+}
+
+struct Diode {
+    bit: u32,
+    branch: usize,
+    forward_v: f64,
+}
+
+/// The solved orbit.
+pub(super) struct Solution<const N: usize> {
+    pub(super) period_s: f64,
+    pub(super) iterations: usize,
+    pub(super) modes: Vec<SizedMode<N>>,
+    pub(super) flows: Vec<Flow<N>>,
+    pub(super) pieces: Vec<Piece<N>>,
+    pub(super) switching: Vec<usize>,
+    pub(super) jump_energy_j: f64,
+    /// Integrals of x x' over each piece, made when first asked for.
+    pub(super) moments: OnceCell<Vec<Square<N>>>,
+}
+
+struct Solver<'a, const N: usize> {
+    circuit: &'a Circuit,
+    clock: &'a [ClockStep],
+    diodes: Vec<Diode>,
+    masses: State<N>,
+    period_s: f64,
+    modes: Vec<SizedMode<N>>,
+    /// Flows over whole clock steps, kept between iterations: (mode, duration, flow).
+    kept: Vec<(usize, f64, usize)>,
+    flows: Vec<Flow<N>>,
+}
+
+struct Lap<const N: usize> {
+    end: State<N>,
+    derivative: Square<N>,
+    pieces: Vec<Piece<N>>,
+    jump_energy_j: f64,
+    conducting: u32,
+}
+
+pub(super) fn solve<const N: usize>(circuit: &Circuit, clock: &[ClockStep]) -> Result<Solution<N>, OrbitError>
+where
+    Const<N>: DimMin<Const<N>, Output = Const<N>>,
+{
+    for step in clock {
+        if !(step.duration_s > 0.0 && step.duration_s.is_finite()) {
+            return Err(OrbitError::Clock { duration_s: step.duration_s });
+        }
+    }
+    let switching = circuit.switching_branches();
+    let diodes = switching
+        .iter()
+        .enumerate()
+        .filter_map(|(k, &branch)| match circuit.branches[branch].element {
+            Element::Diode { forward_v, .. } => Some(Diode { bit: 1 << k, branch, forward_v }),
+            _ => None,
+        })
+        .collect();
+    let (capacitors, inductors) = circuit.state_branches();
+    let mut masses = State::<N>::zeros();
+    for (k, &branch) in capacitors.iter().chain(&inductors).enumerate() {
+        masses[k] = match circuit.branches[branch].element {
+            Element::Capacitor { farad, .. } => farad,
+            Element::Inductor { henry, .. } => henry,
+            _ => 0.0,
+        };
+    }
+    let mut solver = Solver {
+        circuit,
+        clock,
+        diodes,
+        masses,
+        period_s: clock.iter().map(|s| s.duration_s).sum(),
+        modes: Vec::new(),
+        kept: Vec::new(),
+        flows: Vec::new(),
+    };
+    solver.settle().map(|(lap, iterations)| Solution {
+        period_s: solver.period_s,
+        iterations,
+        modes: solver.modes,
+        flows: solver.flows,
+        pieces: lap.pieces,
+        switching,
+        jump_energy_j: lap.jump_energy_j,
+        moments: OnceCell::new(),
+    })
+}
+
+impl<const N: usize> Solver<'_, N> {
+    fn settle(&mut self) -> Result<(Lap<N>, usize), OrbitError>
+    where
+        Const<N>: DimMin<Const<N>, Output = Const<N>>,
+    {
+        let mut x = State::<N>::zeros();
+        x[N - 1] = 1.0;
+        // Diodes left out: the exact answer where none conducts, a start where some do.
+        let mut conducting = 0;
+        let first = self.lap(&x, conducting, false)?;
+        x = newton(&x, &first)?;
+        let mut residual = f64::INFINITY;
+        for iteration in 1..=MOST_ITERATIONS {
+            self.flows.truncate(self.kept.len());
+            let lap = self.lap(&x, conducting, true)?;
+            residual = change(&x, &lap);
+            let settled = residual <= SETTLED && lap.conducting == conducting;
+            conducting = lap.conducting;
+            if settled {
+                return Ok((lap, iteration));
+            }
+            let next = newton(&x, &lap)?;
+            let moved = distance(&x, &next, &lap);
+            if residual <= ACCEPTED && moved <= ACCEPTED && iteration > 4 {
+                return Ok((lap, iteration));
+            }
+            x = if iteration > CALM_AFTER && iteration % 4 != 0 { lap.end } else { next };
+        }
+        Err(OrbitError::NotConverged { iterations: MOST_ITERATIONS, residual })
+    }
+
+    fn mode(&mut self, conducting: u32) -> Result<usize, OrbitError> {
+        if let Some(found) = self.modes.iter().position(|m| m.conducting == conducting) {
+            return Ok(found);
+        }
+        let mode = dynamics::mode(self.circuit, conducting)?;
+        let n = mode.a.nrows() - 1;
+        // The states beyond the circuit's own only decay; the constant comes last.
+        let place = |k: usize| if k == n { N - 1 } else { k };
+        let widen = |m: &nalgebra::DMatrix<f64>, filler: f64| {
+            let mut wide = Square::<N>::zeros();
+            for k in n..N - 1 {
+                wide[(k, k)] = filler;
+            }
+            for row in 0..=n {
+                for column in 0..=n {
+                    wide[(place(row), place(column))] = m[(row, column)];
+                }
+            }
+            wide
+        };
+        let rows = |m: &nalgebra::DMatrix<f64>| -> Vec<State<N>> {
+            (0..m.nrows())
+                .map(|k| {
+                    let mut row = State::<N>::zeros();
+                    for column in 0..=n {
+                        row[place(column)] = m[(k, column)];
+                    }
+                    row
+                })
+                .collect()
+        };
+        self.modes.push(SizedMode {
+            conducting,
+            a: widen(&mode.a, -1.0 / self.period_s),
+            project: mode.project.as_ref().map(|p| widen(p, 1.0)),
+            voltage: rows(&mode.voltage),
+            current: rows(&mode.current),
+        });
+        Ok(self.modes.len() - 1)
+    }
+
+    fn flow(&mut self, mode: usize, duration: f64, keep: bool) -> Result<usize, OrbitError> {
+        if let Some(&(_, _, flow)) = self.kept.iter().find(|(m, d, _)| *m == mode && *d == duration) {
+            return Ok(flow);
+        }
+        let flow = Flow::new(&self.modes[mode].a, duration).ok_or(OrbitError::Overflow)?;
+        self.flows.push(flow);
+        let number = self.flows.len() - 1;
+        // Kept flows stand first, so that the others can be dropped after a lap.
+        if keep && number == self.kept.len() {
+            self.kept.push((mode, duration, number));
+        }
+        Ok(number)
+    }
+
+    /// A diode's margin to its next change as a row: positive while it stays as it is.
+    fn guard(&self, mode: usize, diode: &Diode, conducts: bool) -> State<N> {
+        if conducts {
+            -self.modes[mode].current[diode.branch]
+        } else {
+            let mut row = self.modes[mode].voltage[diode.branch];
+            row[N - 1] += diode.forward_v;
+            row
+        }
+    }
+
+    /// One period from `x`.
+    fn lap(&mut self, x: &State<N>, conducting: u32, with_diodes: bool) -> Result<Lap<N>, OrbitError> {
+        let diode_bits = self.diodes.iter().fold(0, |bits, d| bits | d.bit);
+        let mut lap = Lap {
+            end: *x,
+            derivative: Square::identity(),
+            pieces: Vec::with_capacity(8),
+            jump_energy_j: 0.0,
+            conducting: conducting & diode_bits,
+        };
+        let mut start_s = 0.0;
+        for step in self.clock {
+            let mut left = step.duration_s;
+            let mut settled = !with_diodes;
+            let mut events = 0;
+            loop {
+                let mode = self.mode(step.closed | lap.conducting)?;
+                self.enter(mode, &mut lap);
+                if !settled {
+                    settled = true;
+                    if let Some(bit) = self.inconsistent(mode, &lap) {
+                        lap.conducting ^= bit;
+                        settled = false;
+                        events += 1;
+                        if events > MOST_EVENTS {
+                            return Err(OrbitError::Chatter { events });
+                        }
+                        continue;
+                    }
+                }
+                let whole = left == step.duration_s;
+                let flow = self.flow(mode, left, whole)?;
+                let event = if with_diodes { self.first_event(mode, flow, &lap) } else { None };
+                let Some((diode, at, state)) = event else {
+                    let end = self.flows[flow].end(&lap.end);
+                    lap.pieces.push(Piece { mode, start_s, duration_s: left, start: lap.end, end, flow });
+                    lap.derivative = self.flows[flow].transition() * lap.derivative;
+                    lap.end = end;
+                    start_s += left;
+                    break;
+                };
+                events += 1;
+                if events > MOST_EVENTS {
+                    return Err(OrbitError::Chatter { events });
+                }
+                let bit = self.diodes[diode].bit;
+                let before = self.guard(mode, &self.diodes[diode], lap.conducting & bit != 0);
+                if at > 0.0 {
+                    let part = self.flow(mode, at, false)?;
+                    lap.pieces.push(Piece { mode, start_s, duration_s: at, start: lap.end, end: state, flow: part });
+                    lap.derivative = self.flows[part].transition() * lap.derivative;
+                }
+                lap.end = state;
+                // The instant moves with the state: d(at) = -(g . dx) / (g . x').
+                let slope_before = self.modes[mode].a * state;
+                lap.conducting ^= bit;
+                let next = self.mode(step.closed | lap.conducting)?;
+                let moved = self.modes[next].project.map_or(slope_before, |p| p * slope_before);
+                let jump = moved - self.modes[next].a * self.modes[next].project.map_or(state, |p| p * state);
+                let rate = before.dot(&slope_before);
+                if rate != 0.0 {
+                    let row = before.transpose() * lap.derivative;
+                    if let Some(p) = self.modes[next].project {
+                        lap.derivative = p * lap.derivative;
+                    }
+                    lap.derivative -= jump * row / rate;
+                }
+                left -= at;
+                start_s += at;
+                if left <= 1e-15 * step.duration_s {
+                    break;
+                }
+            }
+        }
+        if lap.end.iter().all(|v| v.is_finite()) { Ok(lap) } else { Err(OrbitError::Overflow) }
+    }
+
+    /// Projects the state onto what the mode allows, booking the energy that is lost.
+    fn enter(&self, mode: usize, lap: &mut Lap<N>) {
+        if let Some(project) = &self.modes[mode].project {
+            let after = project * lap.end;
+            for k in 0..N - 1 {
+                lap.jump_energy_j += 0.5 * self.masses[k] * (lap.end[k] * lap.end[k] - after[k] * after[k]);
+            }
+            lap.end = after;
+            lap.derivative = project * lap.derivative;
+        }
+    }
+
+    /// The bit of a diode that contradicts the state at the start of a stretch.
+    fn inconsistent(&self, mode: usize, lap: &Lap<N>) -> Option<u32> {
+        self.diodes.iter().find_map(|diode| {
+            let row = self.guard(mode, diode, lap.conducting & diode.bit != 0);
+            (row.dot(&lap.end) < -rounding(&row, &lap.end)).then_some(diode.bit)
+        })
+    }
+
+    fn first_event(&self, mode: usize, flow: usize, lap: &Lap<N>) -> Option<(usize, f64, State<N>)> {
+        let mut earliest: Option<(usize, f64, State<N>)> = None;
+        for (k, diode) in self.diodes.iter().enumerate() {
+            let row = self.guard(mode, diode, lap.conducting & diode.bit != 0);
+            let tolerance = rounding(&row, &lap.end);
+            if let Some(fall) = first_fall(&self.flows[flow], &lap.end, &row, tolerance)
+                && earliest.as_ref().is_none_or(|(_, at, _)| fall.at < *at)
+            {
+                earliest = Some((k, fall.at, fall.state));
+            }
+        }
+        earliest
+    }
+}
+
+fn rounding<const N: usize>(row: &State<N>, x: &State<N>) -> f64 {
+    GUARD_ROUNDING * row.iter().zip(x).map(|(r, v)| (r * v).abs()).fold(0.0, f64::max)
+}
+
+fn newton<const N: usize>(x: &State<N>, lap: &Lap<N>) -> Result<State<N>, OrbitError>
+where
+    Const<N>: DimMin<Const<N>, Output = Const<N>>,
+{
+    let mut matrix = Square::<N>::identity() - lap.derivative;
+    let mut residual = lap.end - x;
+    matrix.row_mut(N - 1).fill(0.0);
+    matrix.column_mut(N - 1).fill(0.0);
+    matrix[(N - 1, N - 1)] = 1.0;
+    residual[N - 1] = 0.0;
+    let step = matrix.lu().solve(&residual).ok_or(OrbitError::Undetermined)?;
+    if step.iter().all(|v| v.is_finite()) { Ok(x + step) } else { Err(OrbitError::Undetermined) }
+}
+
+fn sizes<const N: usize>(lap: &Lap<N>) -> State<N> {
+    let mut size = State::<N>::zeros();
+    for piece in &lap.pieces {
+        for k in 0..N {
+            size[k] = size[k].max(piece.start[k].abs()).max(piece.end[k].abs());
+        }
+    }
+    size
+}
+
+fn change<const N: usize>(x: &State<N>, lap: &Lap<N>) -> f64 {
+    distance(x, &lap.end, lap)
+}
+
+fn distance<const N: usize>(x: &State<N>, y: &State<N>, lap: &Lap<N>) -> f64 {
+    let size = sizes(lap);
+    (0..N).filter(|&k| size[k] > 0.0).map(|k| (x[k] - y[k]).abs() / size[k]).fold(0.0, f64::max)
+}

@@ -1,0 +1,3 @@
+//! Sizing.
+mod ideal;
+pub use ideal::{Ideal, ideal};

@@ -1,0 +1,353 @@
+//! The stage: parts and device to a circuit, and the solved circuit to the figures that an
+//! engineer reads.
+
+use crate::answer::{Figures, Losses, Values, Waveforms};
+use crate::circuit::{Circuit, Element};
+use crate::design::{Capacitor, Coil, Diode, Load};
+use crate::orbit::{self, ClockStep, Orbit, OrbitError, Probe};
+use std::f64::consts::TAU;
+use std::fmt;
+
+/// Unaccounted part of the supply power above which a solve is an error.
+pub const BALANCE_BOUND: f64 = 1e-9;
+/// Harmonics that are reported.
+pub const HARMONICS: usize = 20;
+/// Samples in one period of the waveforms.
+pub const SAMPLES: usize = 256;
+
+/// A stage as built: every value known. SI units.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Stage {
+    /// Carrier, hertz.
+    pub carrier_hz: f64,
+    /// On-fraction of the switch.
+    pub duty: f64,
+    /// Supply, volts.
+    pub supply_v: f64,
+    /// On-resistance, ohms; 0 is ideal.
+    pub on_resistance_ohm: f64,
+    /// Constant output capacitance of the device, farads; 0 for none.
+    pub device_f: f64,
+    /// Body diode.
+    pub diode: Option<Diode>,
+    /// Feed coil.
+    pub feed: Part,
+    /// Capacitor fitted beside the device; value 0 for none.
+    pub shunt: Part,
+    /// Series coil.
+    pub series_coil: Part,
+    /// Series capacitor.
+    pub series_capacitor: Part,
+    /// Load of the series branch.
+    pub load: Load,
+}
+
+/// A reactive part with its series resistance.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Part {
+    /// Henries or farads.
+    pub value: f64,
+    /// Ohms in series.
+    pub esr_ohm: f64,
+}
+
+/// Why a stage has no figures.
+#[derive(Debug, Clone, PartialEq)]
+pub enum StageError {
+    /// The steady state was not found.
+    Orbit(OrbitError),
+    /// The powers do not add up.
+    Balance {
+        /// Unaccounted part of the supply power, relative.
+        balance: f64,
+    },
+}
+
+impl fmt::Display for StageError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::Orbit(error) => error.fmt(f),
+            Self::Balance { balance } => {
+                write!(f, "the steady state failed its own power balance by {balance:.1e} of the supply power")
+            }
+        }
+    }
+}
+
+impl std::error::Error for StageError {}
+
+impl From<OrbitError> for StageError {
+    fn from(error: OrbitError) -> Self {
+        Self::Orbit(error)
+    }
+}
+
+/// Branch numbers of the stage's circuit.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Layout {
+    /// What is built.
+    pub circuit: Circuit,
+    supply: usize,
+    feed: usize,
+    switch: usize,
+    diode: Option<usize>,
+    device: Option<usize>,
+    shunt: Option<usize>,
+    series_coil: usize,
+    series_capacitor: usize,
+    load: usize,
+    load_reactance: Option<usize>,
+}
+
+impl Stage {
+    /// The stage's circuit.
+    pub fn layout(&self) -> Layout {
+        let (ground, supply, drain, coil_end, branch_end, load_end) = (0, 1, 2, 3, 4, 5);
+        let coil = |p: Part| Element::Inductor { henry: p.value, ohm: p.esr_ohm };
+        let capacitor = |p: Part| Element::Capacitor { farad: p.value, ohm: p.esr_ohm };
+        let omega = TAU * self.carrier_hz;
+        let mut c = Circuit::default();
+        let source = c.add("supply", supply, ground, Element::Source { volt: self.supply_v });
+        let feed = c.add("feed coil", supply, drain, coil(self.feed));
+        let switch = c.add("switch", drain, ground, Element::Switch { ohm: self.on_resistance_ohm });
+        let diode = self.diode.map(|d| {
+            let element = Element::Diode { forward_v: d.forward_v, ohm: d.slope_ohm };
+            c.add("body diode", drain, ground, element)
+        });
+        let device = (self.device_f > 0.0).then(|| {
+            let element = Element::Capacitor { farad: self.device_f, ohm: 0.0 };
+            c.add("device capacitance", drain, ground, element)
+        });
+        let shunt =
+            (self.shunt.value > 0.0).then(|| c.add("shunt capacitor", drain, ground, capacitor(self.shunt)));
+        let series_coil = c.add("series coil", drain, coil_end, coil(self.series_coil));
+        let series_capacitor = c.add("series capacitor", coil_end, branch_end, capacitor(self.series_capacitor));
+        let x = self.load.x_ohm;
+        let reactance = if x > 0.0 {
+            Some(Element::Inductor { henry: x / omega, ohm: 0.0 })
+        } else if x < 0.0 {
+            Some(Element::Capacitor { farad: -1.0 / (omega * x), ohm: 0.0 })
+        } else {
+            None
+        };
+        let load_to = if reactance.is_some() { load_end } else { ground };
+        let load = c.add("load", branch_end, load_to, Element::Resistor { ohm: self.load.r_ohm });
+        let load_reactance = reactance.map(|element| c.add("load reactance", load_end, ground, element));
+        Layout {
+            circuit: c,
+            supply: source,
+            feed,
+            switch,
+            diode,
+            device,
+            shunt,
+            series_coil,
+            series_capacitor,
+            load,
+            load_reactance,
+        }
+    }
+
+    fn solve_layout(&self, layout: &Layout) -> Result<Box<dyn Orbit>, OrbitError> {
+        let period = 1.0 / self.carrier_hz;
+        let on = ClockStep { duration_s: self.duty * period, closed: 1 };
+        let off = ClockStep { duration_s: (1.0 - self.duty) * period, closed: 0 };
+        orbit::solve(&layout.circuit, &[on, off])
+    }
+
+    /// Only what sizing asks: the drain voltage and slope at turn-on, and the powers.
+    ///
+    /// # Errors
+    /// Where there is no periodic state.
+    pub fn probe(&self) -> Result<Probed, OrbitError> {
+        let layout = self.layout();
+        let orbit = self.solve_layout(&layout)?;
+        let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(Probe::Voltage(layout.switch));
+        let i1 = orbit.harmonics(Probe::Current(layout.load), 1)[1].norm();
+        Ok(Probed {
+            turn_on_v,
+            turn_on_slope_v_per_s,
+            output_power_w: 2.0 * i1 * i1 * self.load.r_ohm,
+            supply_power_w: -self.supply_v * orbit.mean(Probe::Current(layout.supply)),
+            drain_peak_v: orbit.extremes(Probe::Voltage(layout.switch)).greatest,
+        })
+    }
+
+    /// Solves the stage and reads every figure.
+    ///
+    /// # Errors
+    /// Where there is no periodic state, or it fails its own power balance.
+    pub fn solve(&self) -> Result<Reading, StageError> {
+        let layout = self.layout();
+        let orbit = self.solve_layout(&layout)?;
+        let reading = read(self, &layout, orbit.as_ref());
+        if reading.balance.abs() <= BALANCE_BOUND {
+            Ok(reading)
+        } else {
+            Err(StageError::Balance { balance: reading.balance })
+        }
+    }
+
+    /// The elements as the result object states them.
+    pub fn values(&self) -> Values {
+        let coil = |p: Part| Coil { l_h: p.value, esr_ohm: Some(p.esr_ohm) };
+        let capacitor = |p: Part| Capacitor { c_f: p.value, esr_ohm: Some(p.esr_ohm) };
+        Values {
+            feed: coil(self.feed),
+            shunt: capacitor(self.shunt),
+            series_coil: coil(self.series_coil),
+            series_capacitor: capacitor(self.series_capacitor),
+            drain_load: self.load,
+            supply_v: self.supply_v,
+        }
+    }
+}
+
+/// What sizing asks of a stage.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Probed {
+    /// Drain voltage just before turn-on, volts.
+    pub turn_on_v: f64,
+    /// Its slope, volts per second.
+    pub turn_on_slope_v_per_s: f64,
+    /// Carrier power in the load, watts.
+    pub output_power_w: f64,
+    /// Power from the supply, watts.
+    pub supply_power_w: f64,
+    /// Highest drain voltage, volts.
+    pub drain_peak_v: f64,
+}
+
+/// Everything read off a solved stage.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Reading {
+    /// What an engineer reads.
+    pub figures: Figures,
+    /// Where each watt goes.
+    pub losses: Losses,
+    /// Harmonics of the load current from the second on, dBc.
+    pub harmonics_dbc: Vec<f64>,
+    /// Unaccounted part of the supply power, relative.
+    pub balance: f64,
+    /// Curves over one period.
+    pub waveforms: Waveforms,
+    /// Drain voltage's harmonics 0..=20, volts.
+    pub drain_harmonics_v: Vec<f64>,
+    /// Load current's harmonics 0..=20, amperes.
+    pub load_harmonics_a: Vec<f64>,
+}
+
+fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
+    let drain = Probe::Voltage(layout.switch);
+    let square = |probe| orbit.mean_product(probe, probe);
+    let ohmic = |branch: usize, ohm: f64| ohm * square(Probe::Current(branch));
+    let absorbed = |branch| orbit.mean_product(Probe::Voltage(branch), Probe::Current(branch));
+
+    let supply_current_a = -orbit.mean(Probe::Current(layout.supply));
+    let supply_power_w = stage.supply_v * supply_current_a;
+    let total_output_power_w = ohmic(layout.load, stage.load.r_ohm);
+    let load_harmonics_a = amplitudes(orbit, Probe::Current(layout.load));
+    let drain_harmonics_v = amplitudes(orbit, drain);
+    let carrier_a = load_harmonics_a[1];
+    let output_power_w = 0.5 * carrier_a * carrier_a * stage.load.r_ohm;
+    let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(drain);
+
+    let discharged = Discharge::at_turn_on(stage, turn_on_v, layout, orbit);
+    let losses = Losses {
+        switch_w: absorbed(layout.switch) - discharged.in_switch_w,
+        turn_on_w: discharged.total_w,
+        turn_off_w: 0.0,
+        diode_w: layout.diode.map_or(0.0, absorbed),
+        feed_coil_w: ohmic(layout.feed, stage.feed.esr_ohm),
+        shunt_capacitor_w: layout.shunt.map_or(0.0, |b| ohmic(b, stage.shunt.esr_ohm))
+            - discharged.in_shunt_resistance_w,
+        series_coil_w: ohmic(layout.series_coil, stage.series_coil.esr_ohm),
+        series_capacitor_w: ohmic(layout.series_capacitor, stage.series_capacitor.esr_ohm),
+    };
+    let drain_range = orbit.extremes(drain);
+    let switch = Probe::Current(layout.switch);
+    let omega = TAU * stage.carrier_hz;
+    let figures = Figures {
+        supply_power_w,
+        supply_current_a,
+        output_power_w,
+        total_output_power_w,
+        drain_efficiency: output_power_w / supply_power_w,
+        drain_peak_v: drain_range.greatest,
+        drain_least_v: drain_range.least,
+        switch_peak_a: orbit.extremes(switch).greatest,
+        switch_rms_a: square(switch).max(0.0).sqrt(),
+        turn_on_v,
+        turn_on_slope_v_per_s,
+        loaded_q: omega * stage.series_coil.value / stage.load.r_ohm,
+        diode_fraction: layout.diode.map_or(0.0, |b| orbit.conducting_fraction(b)),
+    };
+    Reading {
+        balance: (supply_power_w - total_output_power_w - losses.total_w()) / supply_power_w,
+        harmonics_dbc: load_harmonics_a[2..].iter().map(|a| 20.0 * libm::log10(a / carrier_a)).collect(),
+        waveforms: waveforms(layout, orbit),
+        figures,
+        losses,
+        drain_harmonics_v,
+        load_harmonics_a,
+    }
+}
+
+/// The energy of the shunt capacitance at turn-on, and where it goes.
+struct Discharge {
+    total_w: f64,
+    in_switch_w: f64,
+    in_shunt_resistance_w: f64,
+}
+
+impl Discharge {
+    fn at_turn_on(stage: &Stage, turn_on_v: f64, layout: &Layout, orbit: &dyn Orbit) -> Self {
+        let frequency = stage.carrier_hz;
+        let device_w = 0.5 * stage.device_f * turn_on_v * turn_on_v * frequency;
+        let shunt_v = layout.shunt.map_or(0.0, |branch| {
+            let (current, _) = orbit.before_end(Probe::Current(branch));
+            turn_on_v - current * stage.shunt.esr_ohm
+        });
+        let shunt_w = 0.5 * stage.shunt.value * shunt_v * shunt_v * frequency;
+        // An ideal switch takes the energy of capacitors without resistance in a jump that
+        // no resistor sees; any other goes through the switch and the capacitor's own
+        // resistance in proportion.
+        let (ron, esr) = (stage.on_resistance_ohm, stage.shunt.esr_ohm);
+        let share = if ron > 0.0 { ron / (ron + esr) } else { 0.0 };
+        Self {
+            total_w: device_w + shunt_w,
+            in_switch_w: if ron > 0.0 { device_w + share * shunt_w } else { 0.0 },
+            in_shunt_resistance_w: if esr > 0.0 { (1.0 - share) * shunt_w } else { 0.0 },
+        }
+    }
+}
+
+fn amplitudes(orbit: &dyn Orbit, probe: Probe) -> Vec<f64> {
+    let mut sizes: Vec<f64> = orbit.harmonics(probe, HARMONICS).iter().map(|c| 2.0 * c.norm()).collect();
+    sizes[0] *= 0.5;
+    sizes
+}
+
+fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
+    let sum = |probes: &[Probe]| {
+        let mut total = vec![0.0; SAMPLES + 1];
+        for &probe in probes {
+            for (sum, value) in total.iter_mut().zip(orbit.samples(probe, SAMPLES)) {
+                *sum += value;
+            }
+        }
+        total
+    };
+    let capacitors: Vec<Probe> =
+        [layout.device, layout.shunt].into_iter().flatten().map(Probe::Current).collect();
+    let load: Vec<Probe> =
+        [Some(layout.load), layout.load_reactance].into_iter().flatten().map(Probe::Voltage).collect();
+    let step = orbit.period_s() / SAMPLES as f64;
+    Waveforms {
+        t_s: (0..=SAMPLES).map(|k| k as f64 * step).collect(),
+        drain_v: sum(&[Probe::Voltage(layout.switch)]),
+        switch_a: sum(&[Probe::Current(layout.switch)]),
+        capacitor_a: sum(&capacitors),
+        load_v: sum(&load),
+    }
+}
