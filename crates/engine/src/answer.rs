@@ -6,7 +6,10 @@ use serde::Serialize;
 /// The answer to one design.
 #[derive(Debug, Clone, PartialEq, Serialize)]
 #[serde(tag = "status", rename_all = "lowercase")]
-#[allow(clippy::large_enum_variant, reason = "one value a design; boxing buys nothing")]
+#[allow(
+    clippy::large_enum_variant,
+    reason = "one value a design; boxing buys nothing"
+)]
 pub enum Answer {
     /// There is a stage, and it passed its own power balance.
     Solved(Solved),

@@ -93,14 +93,21 @@ pub struct Circuit {
 impl Circuit {
     /// Adds a branch and gives its number.
     pub fn add(&mut self, name: &'static str, from: Node, to: Node, element: Element) -> usize {
-        self.branches.push(Branch { name, from, to, element });
+        self.branches.push(Branch {
+            name,
+            from,
+            to,
+            element,
+        });
         self.branches.len() - 1
     }
 
     /// Numbers of the branches that carry a state: capacitors, then coils.
     pub fn state_branches(&self) -> (Vec<usize>, Vec<usize>) {
         let pick = |want: fn(&Element) -> bool| {
-            (0..self.branches.len()).filter(|&k| want(&self.branches[k].element)).collect()
+            (0..self.branches.len())
+                .filter(|&k| want(&self.branches[k].element))
+                .collect()
         };
         (
             pick(|e| matches!(e, Element::Capacitor { .. })),
@@ -110,6 +117,8 @@ impl Circuit {
 
     /// Numbers of the branches that switch: bit k of a conduction set is entry k.
     pub fn switching_branches(&self) -> Vec<usize> {
-        (0..self.branches.len()).filter(|&k| self.branches[k].element.is_switching()).collect()
+        (0..self.branches.len())
+            .filter(|&k| self.branches[k].element.is_switching())
+            .collect()
     }
 }

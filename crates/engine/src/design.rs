@@ -66,7 +66,10 @@ pub struct Load {
 
 impl Default for Load {
     fn default() -> Self {
-        Self { r_ohm: 50.0, x_ohm: 0.0 }
+        Self {
+            r_ohm: 50.0,
+            x_ohm: 0.0,
+        }
     }
 }
 
@@ -89,7 +92,12 @@ pub struct Limits {
 
 impl Default for Limits {
     fn default() -> Self {
-        Self { drain_fraction_of_rating: 0.8, efficiency: None, junction_c: None, harmonic_dbc: None }
+        Self {
+            drain_fraction_of_rating: 0.8,
+            efficiency: None,
+            junction_c: None,
+            harmonic_dbc: None,
+        }
     }
 }
 
@@ -268,7 +276,9 @@ fn is_thirty(ratio: &f64) -> bool {
 
 impl Default for Feed {
     fn default() -> Self {
-        Self::Choke { reactance_ratio: thirty() }
+        Self::Choke {
+            reactance_ratio: thirty(),
+        }
     }
 }
 

@@ -37,10 +37,16 @@ impl fmt::Display for DynamicsError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::SourceLoop { elements } => {
-                write!(f, "a loop of voltages with nothing to limit the current: {}", elements.join(", "))
+                write!(
+                    f,
+                    "a loop of voltages with nothing to limit the current: {}",
+                    elements.join(", ")
+                )
             }
             Self::Value { element, value } => write!(f, "{element} cannot have the value {value}"),
-            Self::Singular { element } => write!(f, "nothing determines the current or voltage of {element}"),
+            Self::Singular { element } => {
+                write!(f, "nothing determines the current or voltage of {element}")
+            }
         }
     }
 }
@@ -90,7 +96,13 @@ pub fn mode(circuit: &Circuit, conducting: u32) -> Result<Mode, DynamicsError> {
 }
 
 fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError> {
-    let mut next_node = circuit.branches.iter().map(|b| b.from.max(b.to)).max().unwrap_or(0) + 1;
+    let mut next_node = circuit
+        .branches
+        .iter()
+        .map(|b| b.from.max(b.to))
+        .max()
+        .unwrap_or(0)
+        + 1;
     let mut parts = Vec::with_capacity(2 * circuit.branches.len());
     let mut switching = 0;
     for (number, branch) in circuit.branches.iter().enumerate() {
@@ -98,22 +110,31 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
             if value.is_finite() && value >= least {
                 Ok(value)
             } else {
-                Err(DynamicsError::Value { element: branch.name, value })
+                Err(DynamicsError::Value {
+                    element: branch.name,
+                    value,
+                })
             }
         };
         let (kind, value, ohm) = match branch.element {
             Element::Resistor { ohm } => (None, 0.0, check(ohm, 0.0)?),
-            Element::Inductor { henry, ohm } => {
-                (Some(Kind::Inductor), check(henry, f64::MIN_POSITIVE)?, check(ohm, 0.0)?)
-            }
-            Element::Capacitor { farad, ohm } => {
-                (Some(Kind::Capacitor), check(farad, f64::MIN_POSITIVE)?, check(ohm, 0.0)?)
-            }
+            Element::Inductor { henry, ohm } => (
+                Some(Kind::Inductor),
+                check(henry, f64::MIN_POSITIVE)?,
+                check(ohm, 0.0)?,
+            ),
+            Element::Capacitor { farad, ohm } => (
+                Some(Kind::Capacitor),
+                check(farad, f64::MIN_POSITIVE)?,
+                check(ohm, 0.0)?,
+            ),
             Element::Source { volt } => (Some(Kind::Source), check(volt, f64::MIN)?, 0.0),
             Element::Switch { ohm } => (None, 0.0, check(ohm, 0.0)?),
-            Element::Diode { forward_v, ohm } => {
-                (Some(Kind::Source), -check(forward_v, 0.0)?, check(ohm, 0.0)?)
-            }
+            Element::Diode { forward_v, ohm } => (
+                Some(Kind::Source),
+                -check(forward_v, 0.0)?,
+                check(ohm, 0.0)?,
+            ),
         };
         if branch.element.is_switching() {
             let on = conducting >> switching & 1 == 1;
@@ -130,13 +151,31 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
             } else {
                 branch.to
             };
-            parts.push(Part { branch: number, kind, value, from, to });
+            parts.push(Part {
+                branch: number,
+                kind,
+                value,
+                from,
+                to,
+            });
             from = to;
         }
         if ohm > 0.0 {
-            parts.push(Part { branch: number, kind: Kind::Resistor, value: ohm, from, to: branch.to });
+            parts.push(Part {
+                branch: number,
+                kind: Kind::Resistor,
+                value: ohm,
+                from,
+                to: branch.to,
+            });
         } else if kind.is_none() {
-            parts.push(Part { branch: number, kind: Kind::Source, value: 0.0, from, to: branch.to });
+            parts.push(Part {
+                branch: number,
+                kind: Kind::Source,
+                value: 0.0,
+                from,
+                to: branch.to,
+            });
         }
     }
     Ok(parts)
@@ -177,7 +216,11 @@ impl Tree {
             let steps = walk(parts, &tree, nodes, parts[link].from, parts[link].to);
             if parts[link].kind == Kind::Source {
                 let mut elements = vec![circuit.branches[parts[link].branch].name];
-                elements.extend(steps.iter().map(|&(t, _)| circuit.branches[parts[tree[t]].branch].name));
+                elements.extend(
+                    steps
+                        .iter()
+                        .map(|&(t, _)| circuit.branches[parts[tree[t]].branch].name),
+                );
                 return Err(DynamicsError::SourceLoop { elements });
             }
             for (t, sign) in steps {
@@ -194,20 +237,37 @@ impl Tree {
             capacitors
                 .iter()
                 .position(|&b| b == branch)
-                .or_else(|| inductors.iter().position(|&b| b == branch).map(|k| k + capacitors.len()))
+                .or_else(|| {
+                    inductors
+                        .iter()
+                        .position(|&b| b == branch)
+                        .map(|k| k + capacitors.len())
+                })
                 .unwrap_or(n)
         };
         let inductance = inductance_matrix(circuit, &inductors);
         let name = |part: usize| circuit.branches[parts[part].branch].name;
         let in_tree = |kind: Kind| -> Vec<usize> {
-            (0..self.tree.len()).filter(|&t| parts[self.tree[t]].kind == kind).collect()
+            (0..self.tree.len())
+                .filter(|&t| parts[self.tree[t]].kind == kind)
+                .collect()
         };
         let in_links = |kind: Kind| -> Vec<usize> {
-            (0..self.links.len()).filter(|&l| parts[self.links[l]].kind == kind).collect()
+            (0..self.links.len())
+                .filter(|&l| parts[self.links[l]].kind == kind)
+                .collect()
         };
-        let (tree_e, tree_c, tree_r, tree_l) =
-            (in_tree(Kind::Source), in_tree(Kind::Capacitor), in_tree(Kind::Resistor), in_tree(Kind::Inductor));
-        let (link_c, link_r, link_l) = (in_links(Kind::Capacitor), in_links(Kind::Resistor), in_links(Kind::Inductor));
+        let (tree_e, tree_c, tree_r, tree_l) = (
+            in_tree(Kind::Source),
+            in_tree(Kind::Capacitor),
+            in_tree(Kind::Resistor),
+            in_tree(Kind::Inductor),
+        );
+        let (link_c, link_r, link_l) = (
+            in_links(Kind::Capacitor),
+            in_links(Kind::Resistor),
+            in_links(Kind::Inductor),
+        );
         // Free states: tree capacitors' voltages, link coils' currents; the last column is 1.
         let free = tree_c.len() + link_l.len();
         let row_of_state = |from_tree_c: usize| from_tree_c;
@@ -240,14 +300,22 @@ impl Tree {
                     lhs[(row, column)] += through * self.path[(l, other)];
                 }
                 for &other in tree_e.iter().chain(&tree_c) {
-                    add_scaled(&mut rhs, row, &tree_v, other, -through * self.path[(l, other)]);
+                    add_scaled(
+                        &mut rhs,
+                        row,
+                        &tree_v,
+                        other,
+                        -through * self.path[(l, other)],
+                    );
                 }
             }
         }
         let solved = lhs
             .lu()
             .solve(&rhs)
-            .ok_or_else(|| DynamicsError::Singular { element: name(self.tree[tree_r.first().copied().unwrap_or(0)]) })?;
+            .ok_or_else(|| DynamicsError::Singular {
+                element: name(self.tree[tree_r.first().copied().unwrap_or(0)]),
+            })?;
         for (row, &t) in tree_r.iter().enumerate() {
             tree_v.set_row(t, &solved.row(row));
         }
@@ -261,23 +329,27 @@ impl Tree {
         }
         // Masses and derivatives. `spread_c`, `spread_l`: every state from the free ones.
         let spread_c = DMatrix::from_fn(capacitors.len(), tree_c.len(), |state, k| {
-            self.part_of_state(parts, capacitors[state]).map_or(0.0, |place| match place {
-                Place::Tree(t) => f64::from(u8::from(t == tree_c[k])),
-                Place::Link(l) => self.path[(l, tree_c[k])],
-            })
+            self.part_of_state(parts, capacitors[state])
+                .map_or(0.0, |place| match place {
+                    Place::Tree(t) => f64::from(u8::from(t == tree_c[k])),
+                    Place::Link(l) => self.path[(l, tree_c[k])],
+                })
         });
         let spread_l = DMatrix::from_fn(inductors.len(), link_l.len(), |state, k| {
-            self.part_of_state(parts, inductors[state]).map_or(0.0, |place| match place {
-                Place::Link(l) => f64::from(u8::from(l == link_l[k])),
-                Place::Tree(t) => -self.path[(link_l[k], t)],
-            })
+            self.part_of_state(parts, inductors[state])
+                .map_or(0.0, |place| match place {
+                    Place::Link(l) => f64::from(u8::from(l == link_l[k])),
+                    Place::Tree(t) => -self.path[(link_l[k], t)],
+                })
         });
         let farads = DMatrix::from_diagonal(&nalgebra::DVector::from_iterator(
             capacitors.len(),
-            capacitors.iter().map(|&b| match circuit.branches[b].element {
-                Element::Capacitor { farad, .. } => farad,
-                _ => 0.0,
-            }),
+            capacitors
+                .iter()
+                .map(|&b| match circuit.branches[b].element {
+                    Element::Capacitor { farad, .. } => farad,
+                    _ => 0.0,
+                }),
         ));
         let mass_c = spread_c.transpose() * &farads * &spread_c;
         let mass_l = spread_l.transpose() * &inductance * &spread_l;
@@ -294,7 +366,9 @@ impl Tree {
             }
         }
         let singular = |branches: &[usize]| DynamicsError::Singular {
-            element: branches.first().map_or("the circuit", |&b| circuit.branches[b].name),
+            element: branches
+                .first()
+                .map_or("the circuit", |&b| circuit.branches[b].name),
         };
         let lu_c = mass_c.lu();
         let lu_l = mass_l.lu();
@@ -302,8 +376,15 @@ impl Tree {
         let slope_l = lu_l.solve(&drive_l).ok_or_else(|| singular(&inductors))?;
         // From the free states to all (columns: free, then 1), and back with charge and flux kept.
         let mut expand = DMatrix::<f64>::zeros(n + 1, free + 1);
-        expand.view_mut((0, 0), (capacitors.len(), tree_c.len())).copy_from(&spread_c);
-        expand.view_mut((capacitors.len(), tree_c.len()), (inductors.len(), link_l.len())).copy_from(&spread_l);
+        expand
+            .view_mut((0, 0), (capacitors.len(), tree_c.len()))
+            .copy_from(&spread_c);
+        expand
+            .view_mut(
+                (capacitors.len(), tree_c.len()),
+                (inductors.len(), link_l.len()),
+            )
+            .copy_from(&spread_l);
         expand[(n, free)] = 1.0;
         for &l in &link_c {
             let state = state_of(parts[self.links[l]].branch);
@@ -317,13 +398,28 @@ impl Tree {
         let offset = &charge * expand.view((0, free), (capacitors.len(), 1));
         let keep_c = lu_c.solve(&charge).ok_or_else(|| singular(&capacitors))?;
         let keep_offset = lu_c.solve(&offset).ok_or_else(|| singular(&capacitors))?;
-        let keep_l = lu_l.solve(&(spread_l.transpose() * &inductance)).ok_or_else(|| singular(&inductors))?;
-        gather.view_mut((0, 0), (tree_c.len(), capacitors.len())).copy_from(&keep_c);
-        gather.view_mut((0, n), (tree_c.len(), 1)).copy_from(&(-keep_offset));
-        gather.view_mut((tree_c.len(), capacitors.len()), (link_l.len(), inductors.len())).copy_from(&keep_l);
+        let keep_l = lu_l
+            .solve(&(spread_l.transpose() * &inductance))
+            .ok_or_else(|| singular(&inductors))?;
+        gather
+            .view_mut((0, 0), (tree_c.len(), capacitors.len()))
+            .copy_from(&keep_c);
+        gather
+            .view_mut((0, n), (tree_c.len(), 1))
+            .copy_from(&(-keep_offset));
+        gather
+            .view_mut(
+                (tree_c.len(), capacitors.len()),
+                (link_l.len(), inductors.len()),
+            )
+            .copy_from(&keep_l);
         let mut slope = DMatrix::<f64>::zeros(free + 1, free + 1);
-        slope.view_mut((0, 0), (tree_c.len(), free + 1)).copy_from(&slope_c);
-        slope.view_mut((tree_c.len(), 0), (link_l.len(), free + 1)).copy_from(&slope_l);
+        slope
+            .view_mut((0, 0), (tree_c.len(), free + 1))
+            .copy_from(&slope_c);
+        slope
+            .view_mut((tree_c.len(), 0), (link_l.len(), free + 1))
+            .copy_from(&slope_l);
         // The remaining voltages and currents, then each branch as the sum of its parts.
         for &l in &link_c {
             let part = parts[self.links[l]];
@@ -361,7 +457,13 @@ impl Tree {
     }
 
     /// Voltages of branches that do not conduct, along the tree.
-    fn open_branches(&self, circuit: &Circuit, parts: &[Part], tree_v: &DMatrix<f64>, voltage: &mut DMatrix<f64>) {
+    fn open_branches(
+        &self,
+        circuit: &Circuit,
+        parts: &[Part],
+        tree_v: &DMatrix<f64>,
+        voltage: &mut DMatrix<f64>,
+    ) {
         let nodes = parts.iter().map(|p| p.from.max(p.to)).max().unwrap_or(0) + 1;
         for (number, branch) in circuit.branches.iter().enumerate() {
             let conducts = parts.iter().any(|p| p.branch == number);
@@ -376,7 +478,8 @@ impl Tree {
 
     fn part_of_state(&self, parts: &[Part], branch: usize) -> Option<Place> {
         let is = |&part: &usize| {
-            parts[part].branch == branch && matches!(parts[part].kind, Kind::Capacitor | Kind::Inductor)
+            parts[part].branch == branch
+                && matches!(parts[part].kind, Kind::Capacitor | Kind::Inductor)
         };
         self.tree
             .iter()
@@ -408,7 +511,13 @@ fn inductance_matrix(circuit: &Circuit, inductors: &[usize]) -> DMatrix<f64> {
     matrix
 }
 
-fn add_scaled(target: &mut DMatrix<f64>, row: usize, source: &DMatrix<f64>, from: usize, scale: f64) {
+fn add_scaled(
+    target: &mut DMatrix<f64>,
+    row: usize,
+    source: &DMatrix<f64>,
+    from: usize,
+    scale: f64,
+) {
     if scale != 0.0 {
         for column in 0..target.ncols() {
             target[(row, column)] += scale * source[(from, column)];
@@ -443,7 +552,9 @@ fn walk(parts: &[Part], tree: &[usize], nodes: usize, from: usize, to: usize) ->
     let mut steps = Vec::new();
     let mut node = to;
     while node != from {
-        let Some((previous, t, sign)) = came[node] else { break };
+        let Some((previous, t, sign)) = came[node] else {
+            break;
+        };
         steps.push((t, sign));
         node = previous;
     }

@@ -15,3 +15,5 @@ pub mod dynamics;
 pub mod orbit;
 pub mod sizing;
 pub mod stage;
+
+pub use sizing::solve;

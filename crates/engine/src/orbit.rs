@@ -85,16 +85,30 @@ impl fmt::Display for OrbitError {
         match self {
             Self::Dynamics(error) => error.fmt(f),
             Self::TooManyStates { states, most } => {
-                write!(f, "the circuit has {states} states, more than the {most} that the solver holds")
+                write!(
+                    f,
+                    "the circuit has {states} states, more than the {most} that the solver holds"
+                )
             }
-            Self::Clock { duration_s } => write!(f, "a clock step of {duration_s} s cannot be solved"),
+            Self::Clock { duration_s } => {
+                write!(f, "a clock step of {duration_s} s cannot be solved")
+            }
             Self::Undetermined => {
-                write!(f, "no single steady state exists: some charge or current neither decays nor is driven")
+                write!(
+                    f,
+                    "no single steady state exists: some charge or current neither decays nor is driven"
+                )
             }
             Self::Chatter { events } => {
-                write!(f, "a diode started and stopped more than {events} times within one clock step")
+                write!(
+                    f,
+                    "a diode started and stopped more than {events} times within one clock step"
+                )
             }
-            Self::NotConverged { iterations, residual } => write!(
+            Self::NotConverged {
+                iterations,
+                residual,
+            } => write!(
                 f,
                 "the steady state did not settle in {iterations} iterations (relative change {residual:.1e} a period)"
             ),

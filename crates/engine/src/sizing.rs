@@ -1,3 +1,147 @@
-//! Sizing.
+//! Finds the values: zero drain voltage with zero slope at turn-on, with every loss in
+//! place. What is pinned stays pinned and the rest is found.
+//!
+//! The unknowns are normalised: w C1 R, the series branch's net reactance over R, and R
+//! itself where power and supply ask for it. Newton's method starts from the ideal stage
+//! in closed form ([`ideal`]); where that is too far, feed, loaded Q and losses are moved
+//! from the ideal to the wanted ones in steps.
+
 mod ideal;
+mod least_loss;
+mod newton;
+mod problem;
+mod verdict;
+
 pub use ideal::{Ideal, ideal};
+
+use crate::answer::{Answer, Refusal, Solved};
+use crate::design::{Aim, Design};
+use crate::stage::{Reading, Stage, StageError};
+use problem::Problem;
+use std::fmt;
+
+/// Why there is no sized stage.
+#[derive(Debug, Clone, PartialEq)]
+pub enum SizingError {
+    /// A field of the design is missing or out of range.
+    Field {
+        /// Path in the design file.
+        field: &'static str,
+        /// What is wrong, with the number.
+        reason: String,
+    },
+    /// The loaded Q is too low for soft switching.
+    LoadedQ {
+        /// What was asked.
+        asked: f64,
+        /// The least that allows soft switching here.
+        least: f64,
+        /// On-fraction of the switch.
+        duty: f64,
+    },
+    /// The device's own capacitance exceeds what the stage needs.
+    Capacitance {
+        /// Of the device, farads.
+        device_f: f64,
+        /// Whole shunt capacitance that the stage needs, farads.
+        needed_f: f64,
+        /// Highest carrier that it allows at this power and supply, hertz.
+        highest_hz: f64,
+    },
+    /// Too many elements are pinned for soft switching.
+    Pinned {
+        /// The nearest that exists, one sentence.
+        nearest: String,
+    },
+    /// Newton's method found no soft-switching stage.
+    NoSolution {
+        /// Least that remained of voltage and slope, relative to the supply.
+        residual: f64,
+    },
+    /// The stage as sized has no figures.
+    Stage(StageError),
+}
+
+impl SizingError {
+    /// Path of the field at fault in the design file.
+    pub fn field(&self) -> Option<&'static str> {
+        match self {
+            Self::Field { field, .. } => Some(field),
+            Self::LoadedQ { .. } => Some("stage.loaded_q"),
+            Self::Capacitance { .. } => Some("device.capacitance"),
+            Self::Pinned { .. } => Some("fitted"),
+            Self::NoSolution { .. } | Self::Stage(_) => None,
+        }
+    }
+}
+
+impl fmt::Display for SizingError {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        match self {
+            Self::Field { reason, .. } => f.write_str(reason),
+            Self::LoadedQ { asked, least, duty } => write!(
+                f,
+                "loaded Q {asked:.4} is below {least:.4}, the least for soft switching at duty {duty} with this feed and these losses"
+            ),
+            Self::Capacitance {
+                device_f,
+                needed_f,
+                highest_hz,
+            } => write!(
+                f,
+                "the device's own capacitance, {:.4} pF, exceeds the {:.4} pF that the whole shunt needs; a carrier up to about {:.4} MHz would do, or a smaller device, a lower load resistance, or a resonant feed",
+                device_f * 1e12,
+                needed_f * 1e12,
+                highest_hz * 1e-6
+            ),
+            Self::Pinned { nearest } => f.write_str(nearest),
+            Self::NoSolution { residual } => write!(
+                f,
+                "no soft-switching stage was found: voltage or slope at turn-on stayed at {residual:.2} of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back"
+            ),
+            Self::Stage(error) => error.fmt(f),
+        }
+    }
+}
+
+impl std::error::Error for SizingError {}
+
+/// Sizes and solves a design: the whole answer, as the design file's result object states it.
+pub fn solve(design: &Design) -> Answer {
+    match sized(design) {
+        Ok((stage, reading, notes)) => {
+            let verdicts = verdict::judge(design, &stage, &reading);
+            Answer::Solved(Solved {
+                values: stage.values(),
+                figures: reading.figures,
+                losses: reading.losses,
+                harmonics_dbc: reading.harmonics_dbc,
+                balance: reading.balance,
+                verdicts,
+                notes,
+                waveforms: reading.waveforms,
+                drain_harmonics_v: reading.drain_harmonics_v,
+                load_harmonics_a: reading.load_harmonics_a,
+            })
+        }
+        Err(error) => Answer::Refused(Refusal {
+            reason: error.to_string(),
+            field: error.field().map(str::to_owned),
+        }),
+    }
+}
+
+/// The stage of a design, its reading, and what the person should know about it.
+///
+/// # Errors
+/// See [`SizingError`].
+pub fn sized(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError> {
+    let problem = Problem::of(design)?;
+    let mut notes = problem.notes.clone();
+    let mut stage = newton::size(&problem, &mut notes)?;
+    if design.stage.aim == Aim::LeastLoss {
+        stage = least_loss::improve(&problem, stage, &mut notes)?;
+    }
+    let reading = stage.solve().map_err(SizingError::Stage)?;
+    Ok((stage, reading, notes))
+}

@@ -68,7 +68,10 @@ impl fmt::Display for StageError {
         match self {
             Self::Orbit(error) => error.fmt(f),
             Self::Balance { balance } => {
-                write!(f, "the steady state failed its own power balance by {balance:.1e} of the supply power")
+                write!(
+                    f,
+                    "the steady state failed its own power balance by {balance:.1e} of the supply power"
+                )
             }
         }
     }
@@ -103,36 +106,85 @@ impl Stage {
     /// The stage's circuit.
     pub fn layout(&self) -> Layout {
         let (ground, supply, drain, coil_end, branch_end, load_end) = (0, 1, 2, 3, 4, 5);
-        let coil = |p: Part| Element::Inductor { henry: p.value, ohm: p.esr_ohm };
-        let capacitor = |p: Part| Element::Capacitor { farad: p.value, ohm: p.esr_ohm };
+        let coil = |p: Part| Element::Inductor {
+            henry: p.value,
+            ohm: p.esr_ohm,
+        };
+        let capacitor = |p: Part| Element::Capacitor {
+            farad: p.value,
+            ohm: p.esr_ohm,
+        };
         let omega = TAU * self.carrier_hz;
         let mut c = Circuit::default();
-        let source = c.add("supply", supply, ground, Element::Source { volt: self.supply_v });
+        let source = c.add(
+            "supply",
+            supply,
+            ground,
+            Element::Source {
+                volt: self.supply_v,
+            },
+        );
         let feed = c.add("feed coil", supply, drain, coil(self.feed));
-        let switch = c.add("switch", drain, ground, Element::Switch { ohm: self.on_resistance_ohm });
+        let switch = c.add(
+            "switch",
+            drain,
+            ground,
+            Element::Switch {
+                ohm: self.on_resistance_ohm,
+            },
+        );
         let diode = self.diode.map(|d| {
-            let element = Element::Diode { forward_v: d.forward_v, ohm: d.slope_ohm };
+            let element = Element::Diode {
+                forward_v: d.forward_v,
+                ohm: d.slope_ohm,
+            };
             c.add("body diode", drain, ground, element)
         });
         let device = (self.device_f > 0.0).then(|| {
-            let element = Element::Capacitor { farad: self.device_f, ohm: 0.0 };
+            let element = Element::Capacitor {
+                farad: self.device_f,
+                ohm: 0.0,
+            };
             c.add("device capacitance", drain, ground, element)
         });
-        let shunt =
-            (self.shunt.value > 0.0).then(|| c.add("shunt capacitor", drain, ground, capacitor(self.shunt)));
+        let shunt = (self.shunt.value > 0.0)
+            .then(|| c.add("shunt capacitor", drain, ground, capacitor(self.shunt)));
         let series_coil = c.add("series coil", drain, coil_end, coil(self.series_coil));
-        let series_capacitor = c.add("series capacitor", coil_end, branch_end, capacitor(self.series_capacitor));
+        let series_capacitor = c.add(
+            "series capacitor",
+            coil_end,
+            branch_end,
+            capacitor(self.series_capacitor),
+        );
         let x = self.load.x_ohm;
         let reactance = if x > 0.0 {
-            Some(Element::Inductor { henry: x / omega, ohm: 0.0 })
+            Some(Element::Inductor {
+                henry: x / omega,
+                ohm: 0.0,
+            })
         } else if x < 0.0 {
-            Some(Element::Capacitor { farad: -1.0 / (omega * x), ohm: 0.0 })
+            Some(Element::Capacitor {
+                farad: -1.0 / (omega * x),
+                ohm: 0.0,
+            })
         } else {
             None
         };
-        let load_to = if reactance.is_some() { load_end } else { ground };
-        let load = c.add("load", branch_end, load_to, Element::Resistor { ohm: self.load.r_ohm });
-        let load_reactance = reactance.map(|element| c.add("load reactance", load_end, ground, element));
+        let load_to = if reactance.is_some() {
+            load_end
+        } else {
+            ground
+        };
+        let load = c.add(
+            "load",
+            branch_end,
+            load_to,
+            Element::Resistor {
+                ohm: self.load.r_ohm,
+            },
+        );
+        let load_reactance =
+            reactance.map(|element| c.add("load reactance", load_end, ground, element));
         Layout {
             circuit: c,
             supply: source,
@@ -150,8 +202,14 @@ impl Stage {
 
     fn solve_layout(&self, layout: &Layout) -> Result<Box<dyn Orbit>, OrbitError> {
         let period = 1.0 / self.carrier_hz;
-        let on = ClockStep { duration_s: self.duty * period, closed: 1 };
-        let off = ClockStep { duration_s: (1.0 - self.duty) * period, closed: 0 };
+        let on = ClockStep {
+            duration_s: self.duty * period,
+            closed: 1,
+        };
+        let off = ClockStep {
+            duration_s: (1.0 - self.duty) * period,
+            closed: 0,
+        };
         orbit::solve(&layout.circuit, &[on, off])
     }
 
@@ -184,14 +242,22 @@ impl Stage {
         if reading.balance.abs() <= BALANCE_BOUND {
             Ok(reading)
         } else {
-            Err(StageError::Balance { balance: reading.balance })
+            Err(StageError::Balance {
+                balance: reading.balance,
+            })
         }
     }
 
     /// The elements as the result object states them.
     pub fn values(&self) -> Values {
-        let coil = |p: Part| Coil { l_h: p.value, esr_ohm: Some(p.esr_ohm) };
-        let capacitor = |p: Part| Capacitor { c_f: p.value, esr_ohm: Some(p.esr_ohm) };
+        let coil = |p: Part| Coil {
+            l_h: p.value,
+            esr_ohm: Some(p.esr_ohm),
+        };
+        let capacitor = |p: Part| Capacitor {
+            c_f: p.value,
+            esr_ohm: Some(p.esr_ohm),
+        };
         Values {
             feed: coil(self.feed),
             shunt: capacitor(self.shunt),
@@ -284,7 +350,10 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
     };
     Reading {
         balance: (supply_power_w - total_output_power_w - losses.total_w()) / supply_power_w,
-        harmonics_dbc: load_harmonics_a[2..].iter().map(|a| 20.0 * libm::log10(a / carrier_a)).collect(),
+        harmonics_dbc: load_harmonics_a[2..]
+            .iter()
+            .map(|a| 20.0 * libm::log10(a / carrier_a))
+            .collect(),
         waveforms: waveforms(layout, orbit),
         figures,
         losses,
@@ -316,14 +385,26 @@ impl Discharge {
         let share = if ron > 0.0 { ron / (ron + esr) } else { 0.0 };
         Self {
             total_w: device_w + shunt_w,
-            in_switch_w: if ron > 0.0 { device_w + share * shunt_w } else { 0.0 },
-            in_shunt_resistance_w: if esr > 0.0 { (1.0 - share) * shunt_w } else { 0.0 },
+            in_switch_w: if ron > 0.0 {
+                device_w + share * shunt_w
+            } else {
+                0.0
+            },
+            in_shunt_resistance_w: if esr > 0.0 {
+                (1.0 - share) * shunt_w
+            } else {
+                0.0
+            },
         }
     }
 }
 
 fn amplitudes(orbit: &dyn Orbit, probe: Probe) -> Vec<f64> {
-    let mut sizes: Vec<f64> = orbit.harmonics(probe, HARMONICS).iter().map(|c| 2.0 * c.norm()).collect();
+    let mut sizes: Vec<f64> = orbit
+        .harmonics(probe, HARMONICS)
+        .iter()
+        .map(|c| 2.0 * c.norm())
+        .collect();
     sizes[0] *= 0.5;
     sizes
 }
@@ -338,10 +419,16 @@ fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
         }
         total
     };
-    let capacitors: Vec<Probe> =
-        [layout.device, layout.shunt].into_iter().flatten().map(Probe::Current).collect();
-    let load: Vec<Probe> =
-        [Some(layout.load), layout.load_reactance].into_iter().flatten().map(Probe::Voltage).collect();
+    let capacitors: Vec<Probe> = [layout.device, layout.shunt]
+        .into_iter()
+        .flatten()
+        .map(Probe::Current)
+        .collect();
+    let load: Vec<Probe> = [Some(layout.load), layout.load_reactance]
+        .into_iter()
+        .flatten()
+        .map(Probe::Voltage)
+        .collect();
     let step = orbit.period_s() / SAMPLES as f64;
     Waveforms {
         t_s: (0..=SAMPLES).map(|k| k as f64 * step).collect(),

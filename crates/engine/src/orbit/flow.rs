@@ -52,7 +52,11 @@ impl<const N: usize> Flow<N> {
             let e: Square<N> = ladder[k];
             ladder.push(e * 2.0 + e * e);
         }
-        ladder[rungs].iter().all(|x| x.is_finite()).then_some(Self { a: *a, step, ladder })
+        ladder[rungs].iter().all(|x| x.is_finite()).then_some(Self {
+            a: *a,
+            step,
+            ladder,
+        })
     }
 
     /// Rungs from one cell to the whole stretch.
@@ -138,7 +142,9 @@ fn balanced_norm<const N: usize>(a: &Square<N>) -> f64 {
             }
         }
     }
-    (0..n).map(|k| (0..n).map(|j| m[(j, k)]).sum::<f64>()).fold(0.0, f64::max)
+    (0..n)
+        .map(|k| (0..n).map(|j| m[(j, k)]).sum::<f64>())
+        .fold(0.0, f64::max)
 }
 
 /// Where a quantity first falls below zero within a stretch.
@@ -176,12 +182,20 @@ pub(super) fn narrow<const N: usize>(
             low = middle;
         }
     }
-    Crossing { at: at + high * flow.step, state: series_at(&terms, high) }
+    Crossing {
+        at: at + high * flow.step,
+        state: series_at(&terms, high),
+    }
 }
 
 /// Where `row` . x first falls below zero: by a change of sign between cells, or by a dip
 /// within one whose slope changes sign.
-pub(super) fn first_fall<const N: usize>(flow: &Flow<N>, x: &State<N>, row: &State<N>, tolerance: f64) -> Option<Crossing<N>> {
+pub(super) fn first_fall<const N: usize>(
+    flow: &Flow<N>,
+    x: &State<N>,
+    row: &State<N>,
+    tolerance: f64,
+) -> Option<Crossing<N>> {
     let slope_row = flow.a.transpose() * row;
     let cell = flow.cell_rung();
     let width = flow.rung_duration(cell);
@@ -195,7 +209,9 @@ pub(super) fn first_fall<const N: usize>(flow: &Flow<N>, x: &State<N>, row: &Sta
         if slope_row.dot(&left) < 0.0 && slope_row.dot(&right) > 0.0 {
             let bottom = narrow(flow, left, at, cell, |s| slope_row.dot(s) > 0.0);
             if row.dot(&bottom.state) < -tolerance {
-                return Some(narrow(flow, left, at, cell, |s| row.dot(s) < 0.0 || slope_row.dot(s) > 0.0));
+                return Some(narrow(flow, left, at, cell, |s| {
+                    row.dot(s) < 0.0 || slope_row.dot(s) > 0.0
+                }));
             }
         }
         left = right;

@@ -45,7 +45,12 @@ fn moment<const N: usize>(flow: &Flow<N>, x: &State<N>) -> Square<N> {
 }
 
 /// The integrals of x e^(-jkwt) over a stretch, t from its start.
-fn fourier<const N: usize>(flow: &Flow<N>, x: &State<N>, omega: f64, count: usize) -> Vec<(State<N>, State<N>)> {
+fn fourier<const N: usize>(
+    flow: &Flow<N>,
+    x: &State<N>,
+    omega: f64,
+    count: usize,
+) -> Vec<(State<N>, State<N>)> {
     let terms = flow.series(x);
     let mut sums = vec![(State::<N>::zeros(), State::<N>::zeros()); count + 1];
     for (node, weight) in GAUSS {
@@ -81,8 +86,12 @@ impl<const N: usize> Solution<N> {
     }
 
     fn moments(&self) -> &[Square<N>] {
-        self.moments
-            .get_or_init(|| self.pieces.iter().map(|p| moment(&self.flows[p.flow], &p.start)).collect())
+        self.moments.get_or_init(|| {
+            self.pieces
+                .iter()
+                .map(|p| moment(&self.flows[p.flow], &p.start))
+                .collect()
+        })
     }
 }
 
@@ -174,9 +183,14 @@ impl<const N: usize> Orbit for Solution<N> {
     }
 
     fn before_end(&self, probe: Probe) -> (f64, f64) {
-        let Some(piece) = self.pieces.last() else { return (0.0, 0.0) };
+        let Some(piece) = self.pieces.last() else {
+            return (0.0, 0.0);
+        };
         let row = self.row(piece, probe);
-        (row.dot(&piece.end), row.dot(&(self.modes[piece.mode].a * piece.end)))
+        (
+            row.dot(&piece.end),
+            row.dot(&(self.modes[piece.mode].a * piece.end)),
+        )
     }
 
     fn samples(&self, probe: Probe, count: usize) -> Vec<f64> {
@@ -227,7 +241,9 @@ impl<const N: usize> Orbit for Solution<N> {
     }
 
     fn conducting_fraction(&self, branch: usize) -> f64 {
-        let Some(bit) = self.switching.iter().position(|&b| b == branch) else { return 0.0 };
+        let Some(bit) = self.switching.iter().position(|&b| b == branch) else {
+            return 0.0;
+        };
         let sum: f64 = self
             .pieces
             .iter()

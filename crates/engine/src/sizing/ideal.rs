@@ -20,7 +20,10 @@ pub struct Ideal {
 pub fn ideal(duty: f64) -> Ideal {
     let d = duty;
     let (s, c) = libm::sincos(PI * d);
-    let phi = libm::atan2(libm::cos(2.0 * PI * d) - 1.0, 2.0 * PI * (1.0 - d) + libm::sin(2.0 * PI * d)) + PI;
+    let phi = libm::atan2(
+        libm::cos(2.0 * PI * d) - 1.0,
+        2.0 * PI * (1.0 - d) + libm::sin(2.0 * PI * d),
+    ) + PI;
     let (sp, cp) = libm::sincos(PI * d + phi);
     let shunt = 2.0 * s * cp * sp * ((1.0 - d) * PI * c + s) / (PI * PI * (1.0 - d));
     let power = 2.0 * s * s * sp * sp / (PI * PI * (1.0 - d) * (1.0 - d));
@@ -37,7 +40,11 @@ pub fn ideal(duty: f64) -> Ideal {
         in_phase += voltage(t) * st;
         leading += voltage(t) * ct;
     }
-    Ideal { shunt, reactance: leading / in_phase, power }
+    Ideal {
+        shunt,
+        reactance: leading / in_phase,
+        power,
+    }
 }
 
 #[cfg(test)]
@@ -57,10 +64,15 @@ mod tests {
             (0.75, 0.0221139, 0.448252, 1.50851),
         ] {
             let got = ideal(duty);
-            for (name, value, want) in
-                [("shunt", got.shunt, shunt), ("reactance", got.reactance, reactance), ("power", got.power, power)]
-            {
-                assert!((value / want - 1.0).abs() < 1e-4, "duty {duty} {name}: {value} against {want}");
+            for (name, value, want) in [
+                ("shunt", got.shunt, shunt),
+                ("reactance", got.reactance, reactance),
+                ("power", got.power, power),
+            ] {
+                assert!(
+                    (value / want - 1.0).abs() < 1e-4,
+                    "duty {duty} {name}: {value} against {want}"
+                );
             }
         }
     }

@@ -1,0 +1,374 @@
+//! What is given and what is to be found: a design in the form that the solver takes.
+
+use super::SizingError;
+use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load};
+use crate::stage::{Part, Stage};
+use std::f64::consts::TAU;
+
+/// A design, checked, with its unknowns named.
+#[derive(Debug, Clone)]
+pub(super) struct Problem {
+    pub(super) carrier_hz: f64,
+    pub(super) duty: f64,
+    /// Given supply; none where power and load determine it.
+    pub(super) supply_v: Option<f64>,
+    pub(super) power_w: Option<f64>,
+    pub(super) loaded_q: f64,
+    pub(super) feed: Feed,
+    pub(super) coil_q: Option<f64>,
+    pub(super) capacitor_q: Option<f64>,
+    pub(super) on_resistance_ohm: f64,
+    pub(super) device_f: f64,
+    pub(super) diode: Option<Diode>,
+    pub(super) drain_limit_v: Option<f64>,
+    pub(super) pins: crate::design::Fitted,
+    pub(super) notes: Vec<String>,
+}
+
+/// A point of the search. `shunt` is w C1 R of the whole shunt capacitance, `reactance`
+/// the series branch's net reactance over R.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Point {
+    pub(super) shunt: f64,
+    pub(super) reactance: f64,
+    pub(super) load_ohm: f64,
+    pub(super) supply_v: f64,
+}
+
+/// How far the stage is from the ideal one (0) to the wanted one (1).
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Way(pub(super) f64);
+
+fn field(field: &'static str, reason: String) -> SizingError {
+    SizingError::Field { field, reason }
+}
+
+/// A positive finite number, or the sentence that says it is not.
+fn positive(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
+    in_range(path, what, value, 1e-30, 1e30)
+}
+
+fn in_range(
+    path: &'static str,
+    what: &str,
+    value: f64,
+    least: f64,
+    most: f64,
+) -> Result<f64, SizingError> {
+    if value >= least && value <= most {
+        Ok(value)
+    } else if least == 1e-30 {
+        Err(field(
+            path,
+            format!("{what} must be greater than zero and finite, not {value}"),
+        ))
+    } else {
+        Err(field(
+            path,
+            format!("{what} must lie between {least} and {most}, not at {value}"),
+        ))
+    }
+}
+
+fn not_negative(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
+    if (0.0..=1e30).contains(&value) {
+        Ok(value)
+    } else {
+        Err(field(
+            path,
+            format!("{what} must be zero or more, not {value}"),
+        ))
+    }
+}
+
+impl Problem {
+    pub(super) fn of(design: &Design) -> Result<Self, SizingError> {
+        let (brief, device, stage, pins) =
+            (&design.brief, &design.device, &design.stage, design.fitted);
+        let mut notes = Vec::new();
+        if design.evenfall != crate::design::VERSION {
+            return Err(field(
+                "evenfall",
+                format!(
+                    "version {} of the design file is not known",
+                    design.evenfall
+                ),
+            ));
+        }
+        if stage.form == Form::Differential {
+            return Err(field(
+                "stage.form",
+                "the form `differential` is not solved yet".into(),
+            ));
+        }
+        if stage.stack != 1 {
+            return Err(field(
+                "stage.stack",
+                format!(
+                    "a stack of {} switches is not solved yet; 1 is",
+                    stage.stack
+                ),
+            ));
+        }
+        let device_f = match device.capacitance {
+            Capacitance::None => 0.0,
+            Capacitance::Constant { c_f } => {
+                not_negative("device.capacitance", "the device's capacitance", c_f)?
+            }
+            Capacitance::Junction { .. } => {
+                return Err(field(
+                    "device.capacitance",
+                    "a capacitance of kind `junction` is not solved yet".into(),
+                ));
+            }
+            Capacitance::Points { .. } => {
+                return Err(field(
+                    "device.capacitance",
+                    "a capacitance of kind `points` is not solved yet".into(),
+                ));
+            }
+        };
+        if device.fall_time_s.is_some_and(|t| t != 0.0) {
+            notes.push(
+                "The turn-off fall time is not counted yet: the switch is taken to open at once."
+                    .into(),
+            );
+        }
+        if device.on_resistance_per_k.is_some_and(|t| t != 0.0) {
+            notes.push("The rise of on-resistance with temperature is not counted yet.".into());
+        }
+        let diode = match device.diode {
+            None => None,
+            Some(d) => Some(Diode {
+                forward_v: not_negative(
+                    "device.diode",
+                    "the diode's forward voltage",
+                    d.forward_v,
+                )?,
+                slope_ohm: not_negative(
+                    "device.diode",
+                    "the diode's slope resistance",
+                    d.slope_ohm,
+                )?,
+            }),
+        };
+        let quality =
+            |path, value: Option<f64>| value.map(|q| in_range(path, "Q", q, 0.1, 1e12)).transpose();
+        let feed = match stage.feed {
+            Feed::Choke { reactance_ratio } => {
+                in_range(
+                    "stage.feed",
+                    "the choke's reactance ratio",
+                    reactance_ratio,
+                    0.1,
+                    1e6,
+                )?;
+                stage.feed
+            }
+            Feed::Resonant { q } => {
+                in_range("stage.feed", "q of the resonant feed", q, 0.01, 2.5)?;
+                stage.feed
+            }
+            Feed::Inductance { l_h } => {
+                positive("stage.feed", "the feed inductance", l_h)?;
+                stage.feed
+            }
+        };
+        let mut problem = Self {
+            carrier_hz: in_range(
+                "brief.carrier_hz",
+                "the carrier in hertz",
+                brief.carrier_hz,
+                1e-3,
+                1e13,
+            )?,
+            duty: in_range("stage.duty", "the duty", stage.duty, 0.05, 0.95)?,
+            supply_v: brief
+                .supply_v
+                .map(|v| positive("brief.supply_v", "the supply", v))
+                .transpose()?,
+            power_w: brief
+                .power_w
+                .map(|w| positive("brief.power_w", "the power", w))
+                .transpose()?,
+            loaded_q: in_range("stage.loaded_q", "loaded Q", stage.loaded_q, 0.01, 1e4)?,
+            feed,
+            coil_q: quality("stage.coil_q", stage.coil_q)?,
+            capacitor_q: quality("stage.capacitor_q", stage.capacitor_q)?,
+            on_resistance_ohm: not_negative(
+                "device.on_resistance_ohm",
+                "the on-resistance",
+                device.on_resistance_ohm,
+            )?,
+            device_f,
+            diode,
+            drain_limit_v: device
+                .rating_v
+                .map(|v| v * brief.limits.drain_fraction_of_rating),
+            pins,
+            notes,
+        };
+        problem.check_pins()?;
+        problem.settle_load(brief.load)?;
+        Ok(problem)
+    }
+
+    fn check_pins(&self) -> Result<(), SizingError> {
+        let coil = |path, pin: Option<Coil>| -> Result<(), SizingError> {
+            if let Some(c) = pin {
+                positive(path, "the inductance", c.l_h)?;
+                not_negative(path, "the series resistance", c.esr_ohm.unwrap_or(0.0))?;
+            }
+            Ok(())
+        };
+        coil("fitted.feed", self.pins.feed)?;
+        coil("fitted.series_coil", self.pins.series_coil)?;
+        if let Some(c) = self.pins.series_capacitor {
+            positive("fitted.series_capacitor", "the capacitance", c.c_f)?;
+            not_negative(
+                "fitted.series_capacitor",
+                "the series resistance",
+                c.esr_ohm.unwrap_or(0.0),
+            )?;
+        }
+        if let Some(c) = self.pins.shunt {
+            not_negative("fitted.shunt", "the capacitance", c.c_f)?;
+            not_negative(
+                "fitted.shunt",
+                "the series resistance",
+                c.esr_ohm.unwrap_or(0.0),
+            )?;
+            if c.c_f + self.device_f <= 0.0 {
+                return Err(field(
+                    "fitted.shunt",
+                    "with no device capacitance the shunt capacitor cannot be zero".into(),
+                ));
+            }
+        }
+        Ok(())
+    }
+
+    /// Any two of power, supply and drain load: the load itself stands in where only one is given.
+    fn settle_load(&mut self, load: Load) -> Result<(), SizingError> {
+        if let Some(load) = self.pins.drain_load {
+            positive("fitted.drain_load", "the load resistance", load.r_ohm)?;
+            if !load.x_ohm.is_finite() {
+                return Err(field(
+                    "fitted.drain_load",
+                    format!("the load reactance cannot be {}", load.x_ohm),
+                ));
+            }
+        } else if self.power_w.is_none() || self.supply_v.is_none() {
+            positive("brief.load", "the load resistance", load.r_ohm)?;
+            self.pins.drain_load = Some(load);
+            self.notes.push(format!(
+                "With power or supply left open, the load of {} ohm is taken as the drain load.",
+                load.r_ohm
+            ));
+        }
+        if self.supply_v.is_none() && self.power_w.is_none() {
+            return Err(field(
+                "brief.supply_v",
+                "of power, supply and load resistance two are needed; only the load is given"
+                    .into(),
+            ));
+        }
+        Ok(())
+    }
+
+    pub(super) fn omega(&self) -> f64 {
+        TAU * self.carrier_hz
+    }
+
+    /// Reactance of the load in the series branch beside R, ohms.
+    pub(super) fn load_x(&self) -> f64 {
+        self.pins.drain_load.map_or(0.0, |l| l.x_ohm)
+    }
+
+    /// Whether the load resistance is to be found from power and supply.
+    pub(super) fn seeks_load(&self) -> bool {
+        self.pins.drain_load.is_none()
+    }
+
+    /// The series branch at a point: w L2 / R and 1/(w C2 R). The second is not positive
+    /// where the point asks for more reactance than the coil has.
+    pub(super) fn branch(&self, point: &Point, way: Way) -> (f64, f64) {
+        let scale = self.omega() / point.load_ohm;
+        match (self.pins.series_coil, self.pins.series_capacitor) {
+            (Some(l), Some(c)) => (l.l_h * scale, 1.0 / (self.omega() * c.c_f * point.load_ohm)),
+            (Some(l), None) => (l.l_h * scale, l.l_h * scale - point.reactance),
+            (None, Some(c)) => {
+                let elastance = 1.0 / (self.omega() * c.c_f * point.load_ohm);
+                (elastance + point.reactance, elastance)
+            }
+            (None, None) => {
+                let q = self.start_q() + (self.loaded_q - self.start_q()) * way.0;
+                (q, q - point.reactance)
+            }
+        }
+    }
+
+    /// Loaded Q at the ideal end of the way.
+    fn start_q(&self) -> f64 {
+        self.loaded_q.max(20.0)
+    }
+
+    /// The stage at a point, with feed, loaded Q and losses `way` of the way to the wanted.
+    pub(super) fn stage(&self, point: &Point, way: Way) -> Stage {
+        let omega = self.omega();
+        let r = point.load_ohm;
+        let (coil_x, capacitor_x) = self.branch(point, way);
+        let total_f = point.shunt / (omega * r);
+        let loss = |q: Option<f64>| q.map_or(0.0, |q| way.0 / q);
+        let coil = |l_h: f64, pin: Option<Coil>| Part {
+            value: l_h,
+            esr_ohm: pin
+                .and_then(|p| p.esr_ohm)
+                .unwrap_or(omega * l_h * loss(self.coil_q)),
+        };
+        let capacitor = |c_f: f64, pin: Option<f64>| Part {
+            value: c_f,
+            esr_ohm: pin.unwrap_or(if c_f > 0.0 {
+                loss(self.capacitor_q) / (omega * c_f)
+            } else {
+                0.0
+            }),
+        };
+        let wanted_feed = match (self.pins.feed, self.feed) {
+            (Some(pin), _) => pin.l_h,
+            (None, Feed::Choke { reactance_ratio }) => reactance_ratio * r / omega,
+            (None, Feed::Resonant { q }) => 1.0 / (q * q * omega * omega * total_f),
+            (None, Feed::Inductance { l_h }) => l_h,
+        };
+        let start_feed = (30.0 * r / omega).max(wanted_feed);
+        let feed_l = if way.0 >= 1.0 {
+            wanted_feed
+        } else {
+            1.0 / ((1.0 - way.0) / start_feed + way.0 / wanted_feed)
+        };
+        let shunt_f = self.pins.shunt.map_or(total_f - self.device_f, |p| p.c_f);
+        Stage {
+            carrier_hz: self.carrier_hz,
+            duty: self.duty,
+            supply_v: point.supply_v,
+            on_resistance_ohm: self.on_resistance_ohm * way.0,
+            device_f: if shunt_f > 0.0 {
+                self.device_f
+            } else {
+                total_f
+            },
+            diode: None,
+            feed: coil(feed_l, self.pins.feed),
+            shunt: capacitor(shunt_f.max(0.0), self.pins.shunt.and_then(|p| p.esr_ohm)),
+            series_coil: coil(coil_x * r / omega, self.pins.series_coil),
+            series_capacitor: capacitor(
+                1.0 / (omega * r * capacitor_x),
+                self.pins.series_capacitor.and_then(|p| p.esr_ohm),
+            ),
+            load: Load {
+                r_ohm: r,
+                x_ohm: self.load_x(),
+            },
+        }
+    }
+}
