@@ -12,7 +12,9 @@ pub mod answer;
 pub mod circuit;
 pub mod design;
 pub mod dynamics;
+pub mod exchange;
 pub mod orbit;
+pub mod quantity;
 pub mod sizing;
 pub mod stage;
 

@@ -100,13 +100,12 @@ pub(super) fn judge(design: &Design, stage: &Stage, reading: &Reading) -> Vec<Ve
         );
     }
     if let Some(bound) = limits.harmonic_dbc {
-        let (order, worst) = reading
-            .harmonics_dbc
-            .iter()
-            .enumerate()
-            .fold((0, f64::NEG_INFINITY), |best, (k, &dbc)| {
+        let (order, worst) = reading.harmonics_dbc.iter().enumerate().fold(
+            (0, f64::NEG_INFINITY),
+            |best, (k, &dbc)| {
                 if dbc > best.1 { (k + 2, dbc) } else { best }
-            });
+            },
+        );
         add(
             "harmonics",
             worst,
