@@ -144,7 +144,7 @@ pub fn read(fragment: &str) -> (Design, Vec<String>) {
             vec!["the link is too long to be a design".to_owned()],
         );
     }
-    let mut pairs: Vec<(String, String)> = form_urlencoded::parse(fragment.as_bytes())
+    let pairs: Vec<(String, String)> = form_urlencoded::parse(fragment.as_bytes())
         .into_owned()
         .collect();
     let mut postponed: Vec<(String, String)> = Vec::new();
@@ -270,6 +270,8 @@ fn apply_together(design: &mut Value, postponed: &mut Vec<(String, String)>) {
             .collect::<Vec<_>>()
             .join(".")
     };
+    // A kind starts its group anew, so it comes first.
+    postponed.sort_by_key(|(name, _)| !path_of(name).ends_with(".kind"));
     let groups: Vec<String> = postponed.iter().map(|(name, _)| group(name)).collect();
     for wanted in groups {
         let mut trial = design.clone();

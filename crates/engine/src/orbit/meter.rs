@@ -249,7 +249,7 @@ impl<const N: usize> Orbit for Solution<N> {
             .iter()
             .filter(|p| self.modes[p.mode].conducting >> bit & 1 == 1)
             .map(|p| p.duration_s)
-            .sum();
+            .fold(0.0, |total, duration| total + duration);
         sum / self.period_s
     }
 
