@@ -1,0 +1,202 @@
+//! The stage's elements as a table: each is sized or pinned, and says which.
+
+use crate::state::App;
+use evenfall_engine::answer::Values;
+use evenfall_engine::design::{Capacitor, Coil, Design, Fitted, Load};
+use evenfall_engine::quantity;
+use leptos::prelude::*;
+
+/// One element of the stage as the page knows it.
+#[derive(Clone, Copy)]
+pub(crate) struct Element {
+    /// Its name in the design file.
+    pub(crate) key: &'static str,
+    /// What an engineer calls it.
+    pub(crate) label: &'static str,
+    /// Unit of its value.
+    pub(crate) unit: &'static str,
+    /// Its value in the answer.
+    pub(crate) value: fn(&Values) -> f64,
+    /// Its pinned value.
+    pub(crate) pinned: fn(&Design) -> Option<f64>,
+    /// Pins or frees it.
+    pub(crate) pin: fn(&mut Fitted, Option<f64>),
+}
+
+/// Every element, from the supply to the load.
+pub(crate) const ELEMENTS: [Element; 5] = [
+    Element {
+        key: "feed",
+        label: "Feed coil L1",
+        unit: "H",
+        value: |v| v.feed.l_h,
+        pinned: |d| d.fitted.feed.map(|p| p.l_h),
+        pin: |f, v| {
+            f.feed = v.map(|l_h| Coil {
+                l_h,
+                esr_ohm: f.feed.and_then(|p| p.esr_ohm),
+            })
+        },
+    },
+    Element {
+        key: "shunt",
+        label: "Shunt capacitor C1",
+        unit: "F",
+        value: |v| v.shunt.c_f,
+        pinned: |d| d.fitted.shunt.map(|p| p.c_f),
+        pin: |f, v| {
+            f.shunt = v.map(|c_f| Capacitor {
+                c_f,
+                esr_ohm: f.shunt.and_then(|p| p.esr_ohm),
+            })
+        },
+    },
+    Element {
+        key: "series_coil",
+        label: "Series coil L2",
+        unit: "H",
+        value: |v| v.series_coil.l_h,
+        pinned: |d| d.fitted.series_coil.map(|p| p.l_h),
+        pin: |f, v| {
+            f.series_coil = v.map(|l_h| Coil {
+                l_h,
+                esr_ohm: f.series_coil.and_then(|p| p.esr_ohm),
+            })
+        },
+    },
+    Element {
+        key: "series_capacitor",
+        label: "Series capacitor C2",
+        unit: "F",
+        value: |v| v.series_capacitor.c_f,
+        pinned: |d| d.fitted.series_capacitor.map(|p| p.c_f),
+        pin: |f, v| {
+            f.series_capacitor = v.map(|c_f| Capacitor {
+                c_f,
+                esr_ohm: f.series_capacitor.and_then(|p| p.esr_ohm),
+            });
+        },
+    },
+    Element {
+        key: "drain_load",
+        label: "Drain load R",
+        unit: "Ω",
+        value: |v| v.drain_load.r_ohm,
+        pinned: |d| d.fitted.drain_load.map(|p| p.r_ohm),
+        pin: |f, v| {
+            f.drain_load = v.map(|r_ohm| Load {
+                r_ohm,
+                x_ohm: f.drain_load.map_or(0.0, |p| p.x_ohm),
+            })
+        },
+    },
+];
+
+/// The table of elements.
+#[component]
+pub(crate) fn Parts(app: App) -> impl IntoView {
+    let hold = move |_| {
+        if let Some(solved) = app.last.get_untracked() {
+            app.design.update(|d| {
+                for element in ELEMENTS {
+                    (element.pin)(&mut d.fitted, Some((element.value)(&solved.values)));
+                }
+            });
+        }
+    };
+    let free = move |_| app.design.update(|d| d.fitted = Fitted::default());
+    let as_built = move || app.design.with(|d| d.fitted.is_complete());
+    view! {
+        <section class="card">
+            <h2>"Elements"</h2>
+            <p class="mode" data-test="mode">
+                {move || if as_built() {
+                    "Every element is pinned: this is the stage as built, nothing is sized."
+                } else {
+                    "Elements marked sized follow the brief; type a value to pin one."
+                }}
+            </p>
+            <table class="elements">
+                <thead><tr><th scope="col">"Element"</th><th scope="col">"Value"</th><th scope="col">"State"</th></tr></thead>
+                <tbody>{ELEMENTS.into_iter().map(|element| view! { <Row app element/> }).collect_view()}</tbody>
+            </table>
+            <p class="buttons">
+                <button type="button" data-test="hold-all" on:click=hold>"Pin all as they are"</button>
+                <button type="button" data-test="free-all" on:click=free>"Free all"</button>
+            </p>
+        </section>
+    }
+}
+
+#[component]
+fn Row(app: App, element: Element) -> impl IntoView {
+    let typed: RwSignal<Option<String>> = RwSignal::new(None);
+    let problem: RwSignal<Option<String>> = RwSignal::new(None);
+    let pinned = Memo::new(move |_| app.design.with(element.pinned));
+    let sized = Memo::new(move |_| app.last.get().map(|s| (element.value)(&s.values)));
+    let shown = move || {
+        typed.get().unwrap_or_else(|| {
+            pinned
+                .get()
+                .or(sized.get())
+                .map_or_else(String::new, |v| quantity::format(v, element.unit))
+        })
+    };
+    let set = move |value: Option<f64>| app.design.update(|d| (element.pin)(&mut d.fitted, value));
+    let input = move |text: String| {
+        if text.trim().is_empty() {
+            problem.set(None);
+            set(None);
+        } else {
+            match quantity::parse(&text, element.unit) {
+                Ok(value) => {
+                    problem.set(None);
+                    set(Some(value));
+                }
+                Err(error) => problem.set(Some(error.to_string())),
+            }
+        }
+        typed.set(Some(text));
+    };
+    let key = move |event: leptos::ev::KeyboardEvent| {
+        let factor = match event.key().as_str() {
+            "ArrowUp" => 1.01,
+            "ArrowDown" => 1.0 / 1.01,
+            _ => return,
+        };
+        if let Some(old) = pinned.get_untracked().or(sized.get_untracked()) {
+            event.prevent_default();
+            typed.set(None);
+            problem.set(None);
+            let text = quantity::format(old * factor, element.unit);
+            set(Some(
+                quantity::parse(&text, element.unit).unwrap_or(old * factor),
+            ));
+        }
+    };
+    let id = format!("pin-{}", element.key);
+    let error_id = format!("{id}-problem");
+    view! {
+        <tr class:pinned=move || pinned.get().is_some()>
+            <th scope="row"><label for=id.clone()>{element.label}</label></th>
+            <td>
+                <input id=id.clone() data-test=id type="text" autocomplete="off" spellcheck="false" prop:value=shown
+                    aria-invalid=move || problem.get().is_some().to_string()
+                    aria-describedby=error_id.clone()
+                    on:input:target=move |e| input(e.target().value())
+                    on:keydown=key
+                    on:blur=move |_| if problem.get_untracked().is_none() { typed.set(None) }/>
+                <span class="problem" id=error_id role="status">{move || problem.get()}</span>
+            </td>
+            <td>
+                {move || if pinned.get().is_some() { "pinned" } else { "sized" }}
+                " "
+                <Show when=move || pinned.get().is_some()>
+                    <button type="button" data-test=format!("free-{}", element.key)
+                        aria-label=format!("Free {}", element.label)
+                        on:click=move |_| { typed.set(None); problem.set(None); set(None); }>"free"</button>
+                </Show>
+            </td>
+        </tr>
+    }
+}

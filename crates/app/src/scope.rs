@@ -1,0 +1,240 @@
+//! The waveforms on one time axis, with a readout under the pointer and from the keyboard.
+
+use crate::state::App;
+use evenfall_engine::answer::Waveforms;
+use evenfall_engine::quantity;
+use leptos::html::Canvas;
+use leptos::prelude::*;
+use plotters::prelude::*;
+use plotters_canvas::CanvasBackend;
+use wasm_bindgen::JsCast;
+
+const HEIGHT: f64 = 132.0;
+
+/// One trace of the scope.
+struct Trace {
+    label: &'static str,
+    unit: &'static str,
+    values: fn(&Waveforms) -> &[f64],
+    light: RGBColor,
+    dark: RGBColor,
+}
+
+const TRACES: [Trace; 3] = [
+    Trace {
+        label: "Drain voltage",
+        unit: "V",
+        values: |w| &w.drain_v,
+        light: RGBColor(156, 54, 26),
+        dark: RGBColor(244, 162, 120),
+    },
+    Trace {
+        label: "Switch current",
+        unit: "A",
+        values: |w| &w.switch_a,
+        light: RGBColor(18, 94, 120),
+        dark: RGBColor(122, 200, 226),
+    },
+    Trace {
+        label: "Load voltage",
+        unit: "V",
+        values: |w| &w.load_v,
+        light: RGBColor(84, 84, 20),
+        dark: RGBColor(206, 204, 118),
+    },
+];
+
+/// The scope with its three traces.
+#[component]
+pub(crate) fn Scope(app: App) -> impl IntoView {
+    let periods = RwSignal::new(1usize);
+    let cursor: RwSignal<Option<usize>> = RwSignal::new(None);
+    let resized = RwSignal::new(0u32);
+    let listener = window_event_listener(leptos::ev::resize, move |_| resized.update(|n| *n += 1));
+    on_cleanup(move || listener.remove());
+    let readout = move || {
+        let Some(s) = app.last.get() else {
+            return String::new();
+        };
+        let w = &s.waveforms;
+        let count = w.t_s.len().saturating_sub(1).max(1);
+        let Some(k) = cursor.get() else {
+            return "Point at a trace, or focus it and use the left and right keys, to read values.".to_owned();
+        };
+        let within = k % count;
+        let t = w.t_s.get(within).copied().unwrap_or(0.0) + (k / count) as f64 * w.t_s[count];
+        let mut text = format!("at {}", quantity::format(t, "s"));
+        for trace in &TRACES {
+            if let Some(v) = (trace.values)(w).get(within) {
+                text.push_str(&format!(
+                    " · {} {}",
+                    trace.label.to_lowercase(),
+                    quantity::format(*v, trace.unit)
+                ));
+            }
+        }
+        text
+    };
+    let total = move || {
+        app.last.with(|s| {
+            s.as_ref()
+                .map_or(1, |s| s.waveforms.t_s.len().saturating_sub(1).max(1))
+        }) * periods.get()
+    };
+    let key = move |event: leptos::ev::KeyboardEvent| {
+        let step: i64 = match event.key().as_str() {
+            "ArrowLeft" => -1,
+            "ArrowRight" => 1,
+            _ => return,
+        };
+        event.prevent_default();
+        let span = total() as i64;
+        let now = cursor.get_untracked().map_or(0, |k| k as i64);
+        let step = if event.shift_key() { 16 * step } else { step };
+        cursor.set(usize::try_from((now + step).rem_euclid(span)).ok());
+    };
+    let point = move |event: leptos::ev::PointerEvent| {
+        if let Some(element) = event
+            .target()
+            .and_then(|t| t.dyn_into::<web_sys::Element>().ok())
+        {
+            let frame = element.get_bounding_client_rect();
+            let share = (f64::from(event.client_x()) - frame.left()) / frame.width().max(1.0);
+            cursor.set(Some(
+                (share.clamp(0.0, 1.0) * (total() - 1) as f64) as usize,
+            ));
+        }
+    };
+    view! {
+        <section class="card">
+            <h2>"Waveforms"</h2>
+            <p class="buttons">
+                <button type="button" aria-pressed=move || (periods.get() == 1).to_string() on:click=move |_| periods.set(1)>"one period"</button>
+                <button type="button" aria-pressed=move || (periods.get() == 2).to_string() on:click=move |_| periods.set(2)>"two periods"</button>
+            </p>
+            <div class="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
+                {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized/> }).collect_view()}
+            </div>
+            <p class="readout" aria-live="polite" data-test="readout">{readout}</p>
+        </section>
+    }
+}
+
+#[component]
+fn TraceView(
+    app: App,
+    trace: &'static Trace,
+    periods: RwSignal<usize>,
+    cursor: RwSignal<Option<usize>>,
+    resized: RwSignal<u32>,
+) -> impl IntoView {
+    let canvas: NodeRef<Canvas> = NodeRef::new();
+    Effect::new(move |_| {
+        resized.track();
+        let (Some(canvas), Some(solved)) = (canvas.get(), app.last.get()) else {
+            return;
+        };
+        // A canvas without a context leaves the readout and the figures to speak.
+        let _ = draw(
+            &canvas,
+            trace,
+            &solved.waveforms,
+            periods.get(),
+            cursor.get(),
+        );
+    });
+    let range = move || {
+        app.last.with(|s| {
+            s.as_ref().map_or_else(String::new, |s| {
+                let values = (trace.values)(&s.waveforms);
+                let least = values.iter().copied().fold(f64::INFINITY, f64::min);
+                let most = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+                format!(
+                    "{} to {}",
+                    quantity::format(least, trace.unit),
+                    quantity::format(most, trace.unit)
+                )
+            })
+        })
+    };
+    view! {
+        <figure>
+            <figcaption><b>{trace.label}</b>" "<span>{range}</span></figcaption>
+            <canvas node_ref=canvas role="img" aria-label=format!("{} over time", trace.label)></canvas>
+        </figure>
+    }
+}
+
+fn draw(
+    canvas: &web_sys::HtmlCanvasElement,
+    trace: &Trace,
+    waveforms: &Waveforms,
+    periods: usize,
+    cursor: Option<usize>,
+) -> Option<()> {
+    let ratio = window().device_pixel_ratio().max(1.0);
+    let width = f64::from(canvas.client_width()).max(120.0);
+    canvas.set_width((width * ratio) as u32);
+    canvas.set_height((HEIGHT * ratio) as u32);
+    let dark = window()
+        .match_media("(prefers-color-scheme: dark)")
+        .ok()
+        .flatten()
+        .is_some_and(|m| m.matches());
+    let (ink, colour) = if dark {
+        (RGBColor(150, 160, 164), trace.dark)
+    } else {
+        (RGBColor(120, 116, 106), trace.light)
+    };
+    let values = (trace.values)(waveforms);
+    let count = values.len().saturating_sub(1);
+    if count == 0 {
+        return None;
+    }
+    let least = values.iter().copied().fold(0.0, f64::min);
+    let most = values.iter().copied().fold(0.0, f64::max);
+    let span = (most - least).max(1e-12);
+    let area = CanvasBackend::with_canvas_object(canvas.clone())?.into_drawing_area();
+    let end = (periods * count) as f64;
+    let mut chart = ChartBuilder::on(&area)
+        .margin((4.0 * ratio) as i32)
+        .build_cartesian_2d(0.0..end, (least - 0.06 * span)..(most + 0.06 * span))
+        .ok()?;
+    let line = |points: Vec<(f64, f64)>, style: ShapeStyle| LineSeries::new(points, style);
+    chart
+        .draw_series(line(
+            vec![(0.0, 0.0), (end, 0.0)],
+            ink.stroke_width(ratio as u32),
+        ))
+        .ok()?;
+    let points = (0..=periods * count).map(|k| {
+        let within = if k == periods * count {
+            count
+        } else {
+            k % count
+        };
+        (k as f64, values[within])
+    });
+    chart
+        .draw_series(line(
+            points.collect(),
+            colour.stroke_width((1.8 * ratio) as u32),
+        ))
+        .ok()?;
+    if let Some(k) = cursor {
+        let x = k as f64;
+        chart
+            .draw_series(line(
+                vec![(x, least), (x, most)],
+                ink.stroke_width(ratio as u32),
+            ))
+            .ok()?;
+        let dot = Circle::new(
+            (x, values[k % count]),
+            (3.5 * ratio) as i32,
+            colour.filled(),
+        );
+        chart.draw_series(std::iter::once(dot)).ok()?;
+    }
+    area.present().ok()
+}

@@ -1,0 +1,100 @@
+//! Ground state: one design. Everything else on the page is derived from it.
+
+use crate::examples;
+use evenfall_engine::answer::{Answer, Solved};
+use evenfall_engine::design::Design;
+use evenfall_engine::exchange::link;
+use leptos::prelude::*;
+use std::sync::Arc;
+use std::time::Duration;
+
+/// The page's state, handed to every view.
+#[derive(Clone, Copy)]
+pub(crate) struct App {
+    /// The design: the only thing that is edited.
+    pub(crate) design: RwSignal<Design>,
+    /// The engine's answer to it.
+    pub(crate) answer: Memo<Arc<Answer>>,
+    /// The last answer that was a stage: stays when the design is refused.
+    pub(crate) last: Memo<Option<Arc<Solved>>>,
+    /// What the person should be told outside any field.
+    pub(crate) notices: RwSignal<Vec<String>>,
+}
+
+impl App {
+    /// Opens the address's design, or the starting one.
+    pub(crate) fn open() -> Self {
+        let (design, notices) = from_address();
+        let design = RwSignal::new(design);
+        let answer = Memo::new(move |_| design.with(|d| Arc::new(evenfall_engine::solve(d))));
+        let last = Memo::new(
+            move |old: Option<&Option<Arc<Solved>>>| match &*answer.get() {
+                Answer::Solved(solved) => Some(Arc::new(solved.clone())),
+                Answer::Refused(_) => old.cloned().flatten(),
+            },
+        );
+        Self {
+            design,
+            answer,
+            last,
+            notices: RwSignal::new(notices),
+        }
+    }
+
+    /// Why there is no stage, if there is none.
+    pub(crate) fn refusal(&self) -> Option<String> {
+        match &*self.answer.get() {
+            Answer::Refused(refusal) => Some(refusal.reason.clone()),
+            Answer::Solved(_) => None,
+        }
+    }
+}
+
+fn from_address() -> (Design, Vec<String>) {
+    let hash = window().location().hash().unwrap_or_default();
+    if hash.len() < 2 {
+        return (examples::all().remove(0).1, Vec::new());
+    }
+    let (design, problems) = link::read(&hash);
+    if problems.is_empty() {
+        (design, problems)
+    } else {
+        let mut notices =
+            vec!["The link could not be read whole, so the starting design is shown.".to_owned()];
+        notices.extend(problems);
+        (examples::all().remove(0).1, notices)
+    }
+}
+
+/// Keeps the address's fragment at the design, and the design at a fragment edited by hand.
+pub(crate) fn keep_address(app: App) {
+    let pending: StoredValue<Option<TimeoutHandle>> = StoredValue::new(None);
+    Effect::new(move |_| {
+        let fragment = app.design.with(link::write);
+        if let Some(old) = pending.get_value() {
+            old.clear();
+        }
+        let write = move || {
+            let address = format!("#{fragment}");
+            if window().location().hash().is_ok_and(|now| now != address)
+                && let Ok(history) = window().history()
+                && history
+                    .replace_state_with_url(&wasm_bindgen::JsValue::NULL, "", Some(&address))
+                    .is_err()
+            {
+                app.notices
+                    .update(|n| n.push("The address could not be kept at the design.".to_owned()));
+            }
+        };
+        pending.set_value(set_timeout_with_handle(write, Duration::from_millis(200)).ok());
+    });
+    let listener = window_event_listener(leptos::ev::hashchange, move |_| {
+        let hash = window().location().hash().unwrap_or_default();
+        if hash.trim_start_matches('#') != app.design.with_untracked(link::write) {
+            let (design, notices) = from_address();
+            app.notices.set(notices);
+            app.design.set(design);
+        }
+    });
+    on_cleanup(move || listener.remove());
+}
