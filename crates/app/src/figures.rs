@@ -54,12 +54,13 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
                     "output power" => format!("{:+.1} %", 100.0 * (v.value / v.bound - 1.0)),
                     _ => format!("{:+.1} %", 100.0 * (1.0 - v.value / v.bound)),
                 };
+                // Rounding of the solver is shown as zero.
                 let show = |x: f64| if v.unit.is_empty() { per_cent(x) } else { quantity::format(x, v.unit) };
                 let test = format!("verdict-{}", v.limit.replace(' ', "_"));
                 view! {
                     <tr class:unmet=!v.met data-test=test>
                         <th scope="row">{v.limit.clone()}</th>
-                        <td class="number">{show(v.value)}</td>
+                        <td class="number">{show(tidy(v.value, v.bound.abs()))}</td>
                         <td class="number">{show(v.bound)}</td>
                         <td class="number">{margin}</td>
                         <td>{if v.met { "✓ met" } else { "✗ not met" }}</td>
@@ -74,7 +75,7 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
             <h2>"Verdict"</h2>
             <p class="summary" class:good=good class:bad=move || !good() aria-live="polite" data-test="summary">{summary}</p>
             <div class="scroll"><table class="ledger">
-                <thead><tr><th scope="col">"Limit"</th><th scope="col">"Value"</th><th scope="col">"Bound"</th><th scope="col">"Margin"</th><th scope="col">"Met"</th></tr></thead>
+                <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col">"Met"</th></tr></thead>
                 <tbody>{rows}</tbody>
             </table></div>
             <ul class="plain">
@@ -132,7 +133,7 @@ pub(crate) fn Figures(app: App) -> impl IntoView {
             (
                 "drain_least_v",
                 "Drain voltage, least",
-                quantity::format(f.drain_least_v, "V"),
+                quantity::format(tidy(f.drain_least_v, f.drain_peak_v), "V"),
                 "",
             ),
             (
@@ -186,7 +187,7 @@ pub(crate) fn Figures(app: App) -> impl IntoView {
 }
 
 /// What is below a millionth of the scale is shown as zero: it is the solver's rounding.
-fn tidy(value: f64, scale: f64) -> f64 {
+pub(crate) fn tidy(value: f64, scale: f64) -> f64 {
     if value.abs() < 1e-6 * scale {
         0.0
     } else {

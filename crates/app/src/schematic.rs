@@ -53,7 +53,7 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
     view! {
         <section class="card">
             <h2>"Stage"</h2>
-            <svg class="schematic" viewBox="0 0 620 300" role="img" aria-label="Class-E stage: supply through the feed coil to the drain; switch and shunt capacitor from drain to ground; series coil, series capacitor and load. Values are in the table of elements.">
+            <svg class="schematic" viewBox="0 0 650 270" role="img" aria-label="Class-E stage: supply through the feed coil to the drain; switch and shunt capacitor from drain to ground; series coil, series capacitor and load. Values are in the table of elements.">
                 <g class="wire">
                     <path d="M40 250V150M40 110V50H70M130 50H200V250M200 50H200"/>
                     <path d=coil(70, 50)/>

@@ -1,5 +1,6 @@
 //! The waveforms on one time axis, with a readout under the pointer and from the keyboard.
 
+use crate::figures::tidy;
 use crate::state::App;
 use evenfall_engine::answer::Waveforms;
 use evenfall_engine::quantity;
@@ -149,6 +150,8 @@ fn TraceView(
                 let values = (trace.values)(&s.waveforms);
                 let least = values.iter().copied().fold(f64::INFINITY, f64::min);
                 let most = values.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+                let scale = most.max(-least);
+                let (least, most) = (tidy(least, scale), tidy(most, scale));
                 format!(
                     "{} to {}",
                     quantity::format(least, trace.unit),

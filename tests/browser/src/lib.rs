@@ -1,0 +1,259 @@
+//! What the browser tests stand on: a server of dist/ and a small WebDriver client (W3C
+//! WebDriver over plain HTTP).
+
+use serde_json::{Value, json};
+use std::io::{BufRead, BufReader, Read, Write};
+use std::net::{TcpListener, TcpStream};
+use std::os::unix::process::CommandExt;
+use std::path::{Path, PathBuf};
+use std::process::{Child, Command, Stdio};
+use std::sync::Arc;
+use std::sync::atomic::{AtomicBool, Ordering};
+use std::time::{Duration, Instant};
+
+/// A server of the finished page that can be switched off.
+pub struct Site {
+    /// Where it is.
+    pub address: String,
+    up: Arc<AtomicBool>,
+}
+
+impl Site {
+    /// Serves dist/.
+    pub fn start() -> Self {
+        let listener = TcpListener::bind("127.0.0.1:0").expect("a port");
+        let address = format!("http://{}/", listener.local_addr().expect("its address"));
+        let up = Arc::new(AtomicBool::new(true));
+        let serving = Arc::clone(&up);
+        std::thread::spawn(move || {
+            for stream in listener.incoming().flatten() {
+                if serving.load(Ordering::SeqCst) {
+                    std::thread::spawn(move || answer(stream));
+                }
+            }
+        });
+        Self { address, up }
+    }
+
+    /// Closes every further connection unanswered, as a network that is gone.
+    pub fn go_offline(&self) {
+        self.up.store(false, Ordering::SeqCst);
+    }
+}
+
+/// The folder of the finished page.
+pub fn dist() -> PathBuf {
+    Path::new(env!("CARGO_MANIFEST_DIR")).join("../../dist")
+}
+
+fn answer(mut stream: TcpStream) {
+    let mut reader = BufReader::new(stream.try_clone().expect("a second handle"));
+    let mut request = String::new();
+    if reader.read_line(&mut request).is_err() {
+        return;
+    }
+    let mut line = String::new();
+    while reader.read_line(&mut line).is_ok_and(|n| n > 2) {
+        line.clear();
+    }
+    let path = request
+        .split_whitespace()
+        .nth(1)
+        .unwrap_or("/")
+        .split('?')
+        .next()
+        .unwrap_or("/");
+    let name = if path == "/" {
+        "index.html"
+    } else {
+        path.trim_start_matches('/')
+    };
+    let kind = match name.rsplit('.').next() {
+        Some("html") => "text/html",
+        Some("js") => "text/javascript",
+        Some("css") => "text/css",
+        Some("wasm") => "application/wasm",
+        Some("svg") => "image/svg+xml",
+        _ => "application/json",
+    };
+    let (status, body) = match std::fs::read(dist().join(name)) {
+        Ok(body) => ("200 OK", body),
+        Err(_) => ("404 Not Found", Vec::new()),
+    };
+    let head = format!(
+        "HTTP/1.1 {status}\r\nContent-Type: {kind}\r\nContent-Length: {}\r\nConnection: close\r\n\r\n",
+        body.len()
+    );
+    // The browser may have gone; that is its affair.
+    let _ = stream
+        .write_all(head.as_bytes())
+        .and_then(|()| stream.write_all(&body));
+}
+
+/// A browser with a fresh profile.
+pub struct Browser {
+    driver: Child,
+    port: u16,
+    session: String,
+    profile: PathBuf,
+}
+
+impl Browser {
+    /// Starts ChromeDriver and a headless Chromium.
+    pub fn start(name: &str) -> Self {
+        let profile = std::env::temp_dir().join(format!("evenfall-{}-{name}", std::process::id()));
+        let mut driver = Command::new("/usr/bin/chromedriver")
+            .arg("--port=0")
+            .stdout(Stdio::piped())
+            .stderr(Stdio::null())
+            .process_group(0)
+            .spawn()
+            .expect("ChromeDriver in /usr/bin");
+        let mut lines = BufReader::new(driver.stdout.take().expect("its output")).lines();
+        let port = loop {
+            let line = lines
+                .next()
+                .expect("ChromeDriver names its port")
+                .expect("text");
+            if let Some((_, rest)) = line.split_once("successfully on port ") {
+                break rest.trim_end_matches('.').parse().expect("a port");
+            }
+        };
+        std::thread::spawn(move || lines.for_each(drop));
+        let mut browser = Self {
+            driver,
+            port,
+            session: String::new(),
+            profile,
+        };
+        let arguments = [
+            "--headless=new",
+            "--no-sandbox",
+            "--disable-gpu",
+            "--disable-quic",
+            "--no-first-run",
+            "--disable-background-networking",
+            "--disable-component-update",
+            "--disable-sync",
+            "--disable-dev-shm-usage",
+            "--window-size=1280,1000",
+            &format!("--user-data-dir={}", browser.profile.display()),
+        ];
+        let answer = browser.call(
+            "POST",
+            "/session",
+            &json!({"capabilities": {"alwaysMatch": {
+                "goog:chromeOptions": {"args": arguments},
+                "goog:loggingPrefs": {"browser": "ALL"}
+            }}}),
+        );
+        browser.session = answer["sessionId"].as_str().expect("a session").to_owned();
+        browser
+    }
+
+    fn call(&self, method: &str, path: &str, body: &Value) -> Value {
+        let mut stream = TcpStream::connect(("127.0.0.1", self.port)).expect("ChromeDriver");
+        let body = if method == "GET" {
+            String::new()
+        } else {
+            body.to_string()
+        };
+        write!(
+            stream,
+            "{method} {path} HTTP/1.1\r\nHost: 127.0.0.1:{}\r\nContent-Type: application/json\r\nContent-Length: {}\r\nConnection: close\r\n\r\n{body}",
+            self.port,
+            body.len()
+        )
+        .expect("a request");
+        let mut answer = String::new();
+        stream.read_to_string(&mut answer).expect("an answer");
+        let body = answer.split_once("\r\n\r\n").map_or("", |(_, body)| body);
+        let value: Value = serde_json::from_str(body).unwrap_or_else(|e| panic!("{e}: {answer}"));
+        assert!(
+            value["value"]["error"].is_null(),
+            "{method} {path}: {}",
+            value["value"]
+        );
+        value["value"].clone()
+    }
+
+    fn command(&self, path: &str, body: &Value) -> Value {
+        self.call("POST", &format!("/session/{}/{path}", self.session), body)
+    }
+
+    /// Opens an address.
+    pub fn open(&self, address: &str) {
+        self.command("url", &json!({ "url": address }));
+    }
+
+    /// Runs a script and gives its result.
+    pub fn script(&self, script: &str) -> Value {
+        self.command("execute/sync", &json!({ "script": script, "args": [] }))
+    }
+
+    /// Waits until a script's result is true.
+    #[track_caller]
+    pub fn wait(&self, what: &str, script: &str) {
+        let start = Instant::now();
+        while self.script(script) != json!(true) {
+            assert!(
+                start.elapsed() < Duration::from_secs(20),
+                "waited in vain for {what}"
+            );
+            std::thread::sleep(Duration::from_millis(30));
+        }
+    }
+
+    /// Text of the element that a test id names.
+    pub fn text(&self, test: &str) -> String {
+        let script =
+            format!("return document.querySelector('[data-test=\"{test}\"]')?.textContent ?? ''");
+        self.script(&script).as_str().unwrap_or_default().to_owned()
+    }
+
+    /// Types into a field as keys would.
+    pub fn type_into(&self, test: &str, text: &str) {
+        let found = self.command(
+            "element",
+            &json!({"using": "css selector", "value": format!("[data-test=\"{test}\"]")}),
+        );
+        let id = found
+            .as_object()
+            .and_then(|o| o.values().next())
+            .and_then(Value::as_str)
+            .expect("a field")
+            .to_owned();
+        self.command(&format!("element/{id}/clear"), &json!({}));
+        self.command(&format!("element/{id}/value"), &json!({ "text": text }));
+    }
+
+    /// Presses a button.
+    pub fn press(&self, test: &str) {
+        self.script(&format!(
+            "document.querySelector('[data-test=\"{test}\"]').click()"
+        ));
+    }
+
+    /// Messages of the console at the level of errors.
+    pub fn console_errors(&self) -> Vec<String> {
+        let log = self.command("se/log", &json!({"type": "browser"}));
+        log.as_array()
+            .into_iter()
+            .flatten()
+            .filter(|entry| entry["level"] == "SEVERE")
+            .map(|entry| entry["message"].to_string())
+            .collect()
+    }
+}
+
+impl Drop for Browser {
+    fn drop(&mut self) {
+        // The whole group: killing the driver alone leaves the browser behind.
+        let _ = Command::new("kill")
+            .arg("--")
+            .arg(format!("-{}", self.driver.id()))
+            .status();
+        let _ = self.driver.wait();
+        let _ = std::fs::remove_dir_all(&self.profile);
+    }
+}

@@ -1,0 +1,135 @@
+//! The page, used: type a brief, read the answer, pin, share, break the storage, go offline.
+
+use evenfall_browser_tests::{Browser, Site};
+use evenfall_engine::answer::{Answer, Solved};
+use evenfall_engine::exchange::link;
+use evenfall_engine::{quantity, solve};
+
+const READY: &str = "return !!document.querySelector('[data-test=\"figure-output_power_w\"]')";
+
+/// The engine's own answer to the design that the address holds.
+fn native(browser: &Browser) -> Solved {
+    std::thread::sleep(std::time::Duration::from_millis(400));
+    let hash = browser.script("return location.hash");
+    let (design, problems) = link::read(hash.as_str().expect("a fragment"));
+    assert!(problems.is_empty(), "{problems:?}");
+    match solve(&design) {
+        Answer::Solved(solved) => solved,
+        Answer::Refused(refusal) => panic!("{}", refusal.reason),
+    }
+}
+
+#[track_caller]
+fn same_digits(browser: &Browser, solved: &Solved) {
+    let f = &solved.figures;
+    for (name, value, unit) in [
+        ("output_power_w", f.output_power_w, "W"),
+        ("supply_power_w", f.supply_power_w, "W"),
+        ("supply_current_a", f.supply_current_a, "A"),
+        ("drain_peak_v", f.drain_peak_v, "V"),
+        ("switch_peak_a", f.switch_peak_a, "A"),
+        ("loaded_q", f.loaded_q, ""),
+    ] {
+        assert_eq!(
+            browser.text(&format!("figure-{name}")),
+            quantity::format(value, unit),
+            "{name}"
+        );
+    }
+}
+
+#[test]
+fn a_brief_is_answered_as_the_engine_answers_it() {
+    let site = Site::start();
+    let browser = Browser::start("brief");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    same_digits(&browser, &native(&browser));
+    browser.type_into("field-power", "25W");
+    browser.type_into("field-supply", "24");
+    browser.type_into("field-carrier", "6,78M");
+    let solved = native(&browser);
+    assert!((solved.figures.output_power_w / 25.0 - 1.0).abs() < 1e-6);
+    same_digits(&browser, &solved);
+    // Wrong text keeps the answer and says so beside the field.
+    browser.type_into("field-power", "25 parsnips");
+    assert!(
+        browser
+            .script("return document.getElementById('field-power-problem').textContent")
+            .as_str()
+            .is_some_and(|t| t.contains("unit"))
+    );
+    same_digits(&browser, &solved);
+    assert_eq!(browser.console_errors(), Vec::<String>::new());
+}
+
+#[test]
+fn a_changed_load_fails_its_verdict_and_a_link_carries_the_digits() {
+    let site = Site::start();
+    let browser = Browser::start("load");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    assert!(
+        browser.text("summary").contains("may be built"),
+        "{}",
+        browser.text("summary")
+    );
+    browser.press("hold-all");
+    browser.type_into("pin-drain_load", "50");
+    browser.wait(
+        "the verdict",
+        "return document.querySelector('[data-test=summary]').textContent.startsWith('Not yet')",
+    );
+    browser.press("free-all");
+    browser.type_into("pin-series_capacitor", "100p");
+    let solved = native(&browser);
+    assert!((solved.values.series_capacitor.c_f / 100e-12 - 1.0).abs() < 1e-12);
+    assert!(
+        solved.figures.turn_on_v.abs() < 1e-3,
+        "soft switching is kept around the pinned part"
+    );
+    same_digits(&browser, &solved);
+    let address = browser.script("return location.href");
+    let other = Browser::start("other");
+    other.open(address.as_str().expect("an address"));
+    other.wait("the page", READY);
+    same_digits(&other, &solved);
+}
+
+#[test]
+fn damaged_storage_and_broken_links_lose_nothing() {
+    let site = Site::start();
+    let browser = Browser::start("storage");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.type_into("field-name", "kept");
+    browser.press("save");
+    browser.script("localStorage.setItem('evenfall/1/design/broken', '{\"half')");
+    browser.open(&format!("{}#e=1&v=hostile&p=<b>", site.address));
+    browser.script("location.reload()");
+    browser.wait("the page", READY);
+    let body = browser.script("return document.body.innerText");
+    let body = body.as_str().expect("text");
+    assert!(
+        body.contains("v=hostile") && body.contains("cannot be read") && body.contains("kept"),
+        "{body}"
+    );
+    let left = browser.script("return localStorage.getItem('evenfall/1/design/broken')");
+    assert_eq!(left.as_str(), Some("{\"half"));
+}
+
+#[test]
+fn the_page_works_without_a_network_after_the_first_visit() {
+    let site = Site::start();
+    let browser = Browser::start("offline");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.wait(
+        "the service worker",
+        "return !!navigator.serviceWorker.controller",
+    );
+    site.go_offline();
+    browser.script("location.reload()");
+    browser.wait("the page", READY);
+    same_digits(&browser, &native(&browser));
+}
