@@ -1,9 +1,9 @@
 //! The periodic steady state, without time stepping.
 //!
-//! Between events a stage is linear, so its solution is a matrix exponential ([`flow`]).
+//! Between events a stage is linear, so its solution is a matrix exponential (`flow`).
 //! [`solve`] finds the state that repeats after one period by Newton's method on the
 //! period map, whose derivative is exact, the instants at which diodes start and stop
-//! included; [`meter`] reads means, products, peaks and spectra off the solution.
+//! included; `meter` reads means, products, peaks and spectra off the solution.
 
 mod flow;
 mod meter;
