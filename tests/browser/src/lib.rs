@@ -165,10 +165,21 @@ impl Browser {
             body.len()
         )
         .expect("a request");
-        let mut answer = String::new();
-        stream.read_to_string(&mut answer).expect("an answer");
-        let body = answer.split_once("\r\n\r\n").map_or("", |(_, body)| body);
-        let value: Value = serde_json::from_str(body).unwrap_or_else(|e| panic!("{e}: {answer}"));
+        // ChromeDriver keeps the connection open: the length says where the answer ends.
+        let mut reader = BufReader::new(stream);
+        let (mut line, mut length) = (String::new(), 0);
+        while reader.read_line(&mut line).expect("a header") > 2 {
+            if let Some((name, value)) = line.split_once(':')
+                && name.eq_ignore_ascii_case("content-length")
+            {
+                length = value.trim().parse().expect("a length");
+            }
+            line.clear();
+        }
+        let mut answer = vec![0; length];
+        reader.read_exact(&mut answer).expect("an answer");
+        let body = String::from_utf8_lossy(&answer).into_owned();
+        let value: Value = serde_json::from_str(&body).unwrap_or_else(|e| panic!("{e}: {body}"));
         assert!(
             value["value"]["error"].is_null(),
             "{method} {path}: {}",
@@ -223,7 +234,8 @@ impl Browser {
             .and_then(Value::as_str)
             .expect("a field")
             .to_owned();
-        self.command(&format!("element/{id}/clear"), &json!({}));
+        // Control and a select what stands there, as a person would; E000 lets go of the keys.
+        let text = format!("\u{E009}a\u{E000}{text}");
         self.command(&format!("element/{id}/value"), &json!({ "text": text }));
     }
 

@@ -49,7 +49,8 @@ fn a_brief_is_answered_as_the_engine_answers_it() {
     browser.type_into("field-supply", "24");
     browser.type_into("field-carrier", "6,78M");
     let solved = native(&browser);
-    assert!((solved.figures.output_power_w / 25.0 - 1.0).abs() < 1e-6);
+    let power = solved.figures.output_power_w;
+    assert!((power / 25.0 - 1.0).abs() < 1e-6, "{power} W");
     same_digits(&browser, &solved);
     // Wrong text keeps the answer and says so beside the field.
     browser.type_into("field-power", "25 parsnips");
