@@ -37,6 +37,10 @@ fn solves(c: &mut Criterion) {
         }),
         4.0,
     );
+    let circuit = plain.layout().circuit;
+    c.bench_function("equations of one mode", |b| {
+        b.iter(|| evenfall_engine::dynamics::mode(black_box(&circuit), black_box(1)));
+    });
     c.bench_function("steady state, four states", |b| {
         b.iter(|| black_box(&plain).probe())
     });
