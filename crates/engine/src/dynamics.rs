@@ -10,6 +10,7 @@
 use crate::circuit::{Circuit, Element};
 use nalgebra::DMatrix;
 use std::fmt;
+use std::ops::Range;
 
 /// Why a circuit has no state equations.
 #[derive(Debug, Clone, PartialEq)]
@@ -53,17 +54,74 @@ impl fmt::Display for DynamicsError {
 
 impl std::error::Error for DynamicsError {}
 
-/// The equations of one set of conducting switches, in the whole state with its constant.
+/// Rows of coefficients of the state and its constant, in one piece of memory.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Rows {
+    width: usize,
+    data: Vec<f64>,
+}
+
+impl Rows {
+    fn zeros(count: usize, width: usize) -> Self {
+        Self {
+            width,
+            data: vec![0.0; count * width],
+        }
+    }
+
+    /// Row `k`.
+    pub fn row(&self, k: usize) -> &[f64] {
+        &self.data[k * self.width..(k + 1) * self.width]
+    }
+
+    fn row_mut(&mut self, k: usize) -> &mut [f64] {
+        &mut self.data[k * self.width..(k + 1) * self.width]
+    }
+
+    /// Number of rows.
+    pub fn len(&self) -> usize {
+        self.data.len() / self.width.max(1)
+    }
+
+    /// Whether there is none.
+    pub fn is_empty(&self) -> bool {
+        self.data.is_empty()
+    }
+
+    fn add(&mut self, k: usize, other: &[f64], scale: f64) {
+        if scale != 0.0 {
+            for (sum, x) in self.row_mut(k).iter_mut().zip(other) {
+                *sum += scale * x;
+            }
+        }
+    }
+
+    /// Solves `matrix` x = rows for every column.
+    fn solve(&mut self, matrix: &DMatrix<f64>) -> Option<()> {
+        let count = self.len();
+        let right = DMatrix::from_row_slice(count, self.width, &self.data);
+        let solved = matrix.clone().lu().solve(&right)?;
+        for k in 0..count {
+            for (column, x) in self.row_mut(k).iter_mut().enumerate() {
+                *x = solved[(k, column)];
+            }
+        }
+        Some(())
+    }
+}
+
+/// The equations of one set of conducting switches. Every row is in the whole state with
+/// its constant last.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Mode {
-    /// x' = A x; the last row is zero.
-    pub a: DMatrix<f64>,
-    /// The projection onto the states that this mode allows; none where it allows all.
-    pub project: Option<DMatrix<f64>>,
+    /// Row k: slope of state k.
+    pub slopes: Rows,
+    /// Row k: state k projected onto what this mode allows; none where it allows all.
+    pub project: Option<Rows>,
     /// Row k: voltage of branch k.
-    pub voltage: DMatrix<f64>,
+    pub voltage: Rows,
     /// Row k: current of branch k.
-    pub current: DMatrix<f64>,
+    pub current: Rows,
 }
 
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
@@ -92,7 +150,12 @@ struct Part {
 pub fn mode(circuit: &Circuit, conducting: u32) -> Result<Mode, DynamicsError> {
     let parts = parts(circuit, conducting)?;
     let tree = Tree::grow(circuit, &parts)?;
-    tree.equations(circuit, &parts)
+    Equations {
+        circuit,
+        parts: &parts,
+        tree: &tree,
+    }
+    .mode()
 }
 
 fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError> {
@@ -183,37 +246,45 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
 
 /// A spanning tree that prefers sources, then capacitors, then resistors, then coils.
 struct Tree {
-    /// Parts in the tree.
+    /// Parts in the tree, in the order of their kinds.
     tree: Vec<usize>,
-    /// Parts outside it.
-    links: Vec<usize>,
-    /// Entry (link, tree): sign of the tree part's voltage in the link's.
-    path: DMatrix<f64>,
+    /// Parts outside it, in the order of their kinds, each with the tree parts (as positions
+    /// in `tree`) along its path and the sign of each voltage in its own.
+    links: Vec<(usize, Vec<(usize, f64)>)>,
 }
 
 impl Tree {
     fn grow(circuit: &Circuit, parts: &[Part]) -> Result<Self, DynamicsError> {
-        let nodes = parts.iter().map(|p| p.from.max(p.to)).max().unwrap_or(0) + 1;
+        let nodes = node_count(parts);
         let mut group: Vec<usize> = (0..nodes).collect();
-        let mut order: Vec<usize> = (0..parts.len()).collect();
-        order.sort_by_key(|&k| parts[k].kind);
-        let (mut tree, mut links) = (Vec::new(), Vec::new());
-        for k in order {
-            let (a, b) = (group[parts[k].from], group[parts[k].to]);
-            if a == b {
-                links.push(k);
-            } else {
-                for g in &mut group {
-                    if *g == b {
-                        *g = a;
-                    }
+        let (mut tree, mut outside) = (
+            Vec::with_capacity(parts.len()),
+            Vec::with_capacity(parts.len()),
+        );
+        for kind in [
+            Kind::Source,
+            Kind::Capacitor,
+            Kind::Resistor,
+            Kind::Inductor,
+        ] {
+            for (k, part) in parts
+                .iter()
+                .enumerate()
+                .filter(|(_, part)| part.kind == kind)
+            {
+                let (a, b) = (group[part.from], group[part.to]);
+                if a == b {
+                    outside.push(k);
+                } else {
+                    group.iter_mut().filter(|g| **g == b).for_each(|g| *g = a);
+                    tree.push(k);
                 }
-                tree.push(k);
             }
         }
-        let mut path = DMatrix::zeros(links.len(), tree.len());
-        for (row, &link) in links.iter().enumerate() {
-            let steps = walk(parts, &tree, nodes, parts[link].from, parts[link].to);
+        let routes = Routes::of(parts, &tree, nodes);
+        let mut links = Vec::with_capacity(outside.len());
+        for link in outside {
+            let steps = routes.between(parts[link].from, parts[link].to);
             if parts[link].kind == Kind::Source {
                 let mut elements = vec![circuit.branches[parts[link].branch].name];
                 elements.extend(
@@ -223,340 +294,576 @@ impl Tree {
                 );
                 return Err(DynamicsError::SourceLoop { elements });
             }
-            for (t, sign) in steps {
-                path[(row, t)] = sign;
+            links.push((link, steps));
+        }
+        Ok(Self { tree, links })
+    }
+}
+
+fn node_count(parts: &[Part]) -> usize {
+    parts.iter().map(|p| p.from.max(p.to)).max().unwrap_or(0) + 1
+}
+
+/// The tree seen from its roots: each node's way up.
+struct Routes {
+    /// Parent node, tree position and sign of the step up; none at a root.
+    up: Vec<Option<(usize, usize, f64)>>,
+    depth: Vec<usize>,
+}
+
+impl Routes {
+    fn of(parts: &[Part], tree: &[usize], nodes: usize) -> Self {
+        let mut up = vec![None; nodes];
+        let mut depth = vec![usize::MAX; nodes];
+        let mut queue = Vec::with_capacity(nodes);
+        for root in 0..nodes {
+            if depth[root] != usize::MAX {
+                continue;
+            }
+            depth[root] = 0;
+            queue.clear();
+            queue.push(root);
+            let mut head = 0;
+            while head < queue.len() {
+                let node = queue[head];
+                head += 1;
+                for (t, &part) in tree.iter().enumerate() {
+                    let part = &parts[part];
+                    // The voltage of the lower node against the upper one.
+                    let (other, sign) = if part.from == node {
+                        (part.to, -1.0)
+                    } else if part.to == node {
+                        (part.from, 1.0)
+                    } else {
+                        continue;
+                    };
+                    if depth[other] == usize::MAX {
+                        depth[other] = depth[node] + 1;
+                        up[other] = Some((node, t, sign));
+                        queue.push(other);
+                    }
+                }
             }
         }
-        Ok(Self { tree, links, path })
+        Self { up, depth }
     }
 
-    fn equations(&self, circuit: &Circuit, parts: &[Part]) -> Result<Mode, DynamicsError> {
-        let (capacitors, inductors) = circuit.state_branches();
-        let n = capacitors.len() + inductors.len();
-        let state_of = |branch: usize| {
-            capacitors
-                .iter()
-                .position(|&b| b == branch)
-                .or_else(|| {
-                    inductors
-                        .iter()
-                        .position(|&b| b == branch)
-                        .map(|k| k + capacitors.len())
-                })
-                .unwrap_or(n)
-        };
-        let inductance = inductance_matrix(circuit, &inductors);
-        let name = |part: usize| circuit.branches[parts[part].branch].name;
-        let in_tree = |kind: Kind| -> Vec<usize> {
-            (0..self.tree.len())
-                .filter(|&t| parts[self.tree[t]].kind == kind)
-                .collect()
-        };
-        let in_links = |kind: Kind| -> Vec<usize> {
-            (0..self.links.len())
-                .filter(|&l| parts[self.links[l]].kind == kind)
-                .collect()
-        };
-        let (tree_e, tree_c, tree_r, tree_l) = (
-            in_tree(Kind::Source),
-            in_tree(Kind::Capacitor),
-            in_tree(Kind::Resistor),
-            in_tree(Kind::Inductor),
-        );
-        let (link_c, link_r, link_l) = (
-            in_links(Kind::Capacitor),
-            in_links(Kind::Resistor),
-            in_links(Kind::Inductor),
-        );
-        // Free states: tree capacitors' voltages, link coils' currents; the last column is 1.
-        let free = tree_c.len() + link_l.len();
-        let row_of_state = |from_tree_c: usize| from_tree_c;
-        let mut tree_v = DMatrix::<f64>::zeros(self.tree.len(), free + 1);
-        let mut link_i = DMatrix::<f64>::zeros(self.links.len(), free + 1);
-        for &t in &tree_e {
-            tree_v[(t, free)] = parts[self.tree[t]].value;
-        }
-        for (k, &t) in tree_c.iter().enumerate() {
-            tree_v[(t, row_of_state(k))] = 1.0;
-        }
-        for (k, &l) in link_l.iter().enumerate() {
-            link_i[(l, tree_c.len() + k)] = 1.0;
-        }
-        // Resistors: v = R i in the tree, i = v / R outside it.
-        let m = tree_r.len();
-        let mut lhs = DMatrix::<f64>::identity(m, m);
-        let mut rhs = DMatrix::<f64>::zeros(m, free + 1);
-        for (row, &t) in tree_r.iter().enumerate() {
-            let ohm = parts[self.tree[t]].value;
-            for &l in &link_l {
-                add_scaled(&mut rhs, row, &link_i, l, -ohm * self.path[(l, t)]);
-            }
-            for &l in &link_r {
-                let through = ohm * self.path[(l, t)] / parts[self.links[l]].value;
-                if through == 0.0 {
-                    continue;
-                }
-                for (column, &other) in tree_r.iter().enumerate() {
-                    lhs[(row, column)] += through * self.path[(l, other)];
-                }
-                for &other in tree_e.iter().chain(&tree_c) {
-                    add_scaled(
-                        &mut rhs,
-                        row,
-                        &tree_v,
-                        other,
-                        -through * self.path[(l, other)],
-                    );
-                }
+    /// Tree positions on the way between two nodes, each with the sign of its voltage in the
+    /// voltage of `from` against `to`; what is reached where the two are not connected.
+    fn between(&self, mut from: usize, mut to: usize) -> Vec<(usize, f64)> {
+        let mut steps = Vec::new();
+        while from != to {
+            let lower = self.depth[from] >= self.depth[to];
+            let node = if lower { from } else { to };
+            let Some((parent, t, sign)) = self.up[node] else {
+                break;
+            };
+            steps.push((t, if lower { sign } else { -sign }));
+            if lower {
+                from = parent;
+            } else {
+                to = parent;
             }
         }
-        let solved = lhs
-            .lu()
-            .solve(&rhs)
-            .ok_or_else(|| DynamicsError::Singular {
-                element: name(self.tree[tree_r.first().copied().unwrap_or(0)]),
-            })?;
-        for (row, &t) in tree_r.iter().enumerate() {
-            tree_v.set_row(t, &solved.row(row));
-        }
-        for &l in &link_r {
-            for &t in tree_e.iter().chain(&tree_c).chain(&tree_r) {
-                let scale = self.path[(l, t)] / parts[self.links[l]].value;
-                if scale != 0.0 {
-                    add_scaled(&mut link_i, l, &tree_v, t, scale);
-                }
-            }
-        }
-        // Masses and derivatives. `spread_c`, `spread_l`: every state from the free ones.
-        let spread_c = DMatrix::from_fn(capacitors.len(), tree_c.len(), |state, k| {
-            self.part_of_state(parts, capacitors[state])
-                .map_or(0.0, |place| match place {
-                    Place::Tree(t) => f64::from(u8::from(t == tree_c[k])),
-                    Place::Link(l) => self.path[(l, tree_c[k])],
-                })
-        });
-        let spread_l = DMatrix::from_fn(inductors.len(), link_l.len(), |state, k| {
-            self.part_of_state(parts, inductors[state])
-                .map_or(0.0, |place| match place {
-                    Place::Link(l) => f64::from(u8::from(l == link_l[k])),
-                    Place::Tree(t) => -self.path[(link_l[k], t)],
-                })
-        });
-        let farads = DMatrix::from_diagonal(&nalgebra::DVector::from_iterator(
-            capacitors.len(),
-            capacitors
-                .iter()
-                .map(|&b| match circuit.branches[b].element {
-                    Element::Capacitor { farad, .. } => farad,
-                    _ => 0.0,
-                }),
-        ));
-        let mass_c = spread_c.transpose() * &farads * &spread_c;
-        let mass_l = spread_l.transpose() * &inductance * &spread_l;
-        let mut drive_c = DMatrix::<f64>::zeros(tree_c.len(), free + 1);
-        for (row, &t) in tree_c.iter().enumerate() {
-            for &l in link_r.iter().chain(&link_l) {
-                add_scaled(&mut drive_c, row, &link_i, l, -self.path[(l, t)]);
-            }
-        }
-        let mut drive_l = DMatrix::<f64>::zeros(link_l.len(), free + 1);
-        for (row, &l) in link_l.iter().enumerate() {
-            for &t in tree_e.iter().chain(&tree_c).chain(&tree_r) {
-                add_scaled(&mut drive_l, row, &tree_v, t, self.path[(l, t)]);
-            }
-        }
-        let singular = |branches: &[usize]| DynamicsError::Singular {
-            element: branches
-                .first()
-                .map_or("the circuit", |&b| circuit.branches[b].name),
-        };
-        let lu_c = mass_c.lu();
-        let lu_l = mass_l.lu();
-        let slope_c = lu_c.solve(&drive_c).ok_or_else(|| singular(&capacitors))?;
-        let slope_l = lu_l.solve(&drive_l).ok_or_else(|| singular(&inductors))?;
-        // From the free states to all (columns: free, then 1), and back with charge and flux kept.
-        let mut expand = DMatrix::<f64>::zeros(n + 1, free + 1);
-        expand
-            .view_mut((0, 0), (capacitors.len(), tree_c.len()))
-            .copy_from(&spread_c);
-        expand
-            .view_mut(
-                (capacitors.len(), tree_c.len()),
-                (inductors.len(), link_l.len()),
+        steps
+    }
+}
+
+/// What the equations are made from.
+struct Equations<'a> {
+    circuit: &'a Circuit,
+    parts: &'a [Part],
+    tree: &'a Tree,
+}
+
+/// Positions of each kind.
+struct Places {
+    tree_e: Range<usize>,
+    tree_c: Range<usize>,
+    tree_r: Range<usize>,
+    tree_l: Range<usize>,
+    link_c: Range<usize>,
+    link_r: Range<usize>,
+    link_l: Range<usize>,
+}
+
+impl Equations<'_> {
+    fn places(&self) -> Places {
+        let in_tree = |kind| range(self.tree.tree.iter().map(|&k| self.parts[k].kind), kind);
+        let in_links = |kind| {
+            range(
+                self.tree.links.iter().map(|(k, _)| self.parts[*k].kind),
+                kind,
             )
-            .copy_from(&spread_l);
-        expand[(n, free)] = 1.0;
-        for &l in &link_c {
-            let state = state_of(parts[self.links[l]].branch);
-            for &t in &tree_e {
-                expand[(state, free)] += self.path[(l, t)] * parts[self.tree[t]].value;
+        };
+        Places {
+            tree_e: in_tree(Kind::Source),
+            tree_c: in_tree(Kind::Capacitor),
+            tree_r: in_tree(Kind::Resistor),
+            tree_l: in_tree(Kind::Inductor),
+            link_c: in_links(Kind::Capacitor),
+            link_r: in_links(Kind::Resistor),
+            link_l: in_links(Kind::Inductor),
+        }
+    }
+
+    fn tree_part(&self, t: usize) -> &Part {
+        &self.parts[self.tree.tree[t]]
+    }
+
+    fn link_part(&self, l: usize) -> &Part {
+        &self.parts[self.tree.links[l].0]
+    }
+
+    fn singular(&self, part: &Part) -> DynamicsError {
+        DynamicsError::Singular {
+            element: self.circuit.branches[part.branch].name,
+        }
+    }
+
+    fn mode(&self) -> Result<Mode, DynamicsError> {
+        let places = self.places();
+        let (capacitors, inductors) = self.circuit.state_branches();
+        let states = capacitors.len() + inductors.len();
+        let width = states + 1;
+        // State number of each branch that has one.
+        let mut state_of = vec![states; self.circuit.branches.len()];
+        for (state, &branch) in capacitors.iter().chain(&inductors).enumerate() {
+            state_of[branch] = state;
+        }
+        let mut tree_v = Rows::zeros(self.tree.tree.len(), width);
+        let mut link_i = Rows::zeros(self.tree.links.len(), width);
+        for t in places.tree_e.clone() {
+            tree_v.row_mut(t)[states] = self.tree_part(t).value;
+        }
+        let mass_c = self.free_voltages(&places, &state_of, &mut tree_v)?;
+        let flux = Flux::of(self, &places, &state_of, capacitors.len());
+        flux.free_currents(self, &places, &state_of, &mut link_i)?;
+        self.resistors(&places, &mut tree_v, &mut link_i)?;
+
+        // Slopes of the free states, then of all.
+        let mut slopes = Rows::zeros(states, width);
+        let mut project = (!places.link_c.is_empty() || !places.tree_l.is_empty())
+            .then(|| Rows::zeros(states, width));
+        let mut drive = Rows::zeros(places.tree_c.len(), width);
+        for l in places.link_r.start..places.link_l.end {
+            for &(t, sign) in self.tree.links[l]
+                .1
+                .iter()
+                .filter(|(t, _)| places.tree_c.contains(t))
+            {
+                drive.add(t - places.tree_c.start, link_i.row(l), -sign);
             }
         }
-        let mut gather = DMatrix::<f64>::zeros(free + 1, n + 1);
-        gather[(free, n)] = 1.0;
-        let charge = spread_c.transpose() * &farads;
-        let offset = &charge * expand.view((0, free), (capacitors.len(), 1));
-        let keep_c = lu_c.solve(&charge).ok_or_else(|| singular(&capacitors))?;
-        let keep_offset = lu_c.solve(&offset).ok_or_else(|| singular(&capacitors))?;
-        let keep_l = lu_l
-            .solve(&(spread_l.transpose() * &inductance))
-            .ok_or_else(|| singular(&inductors))?;
-        gather
-            .view_mut((0, 0), (tree_c.len(), capacitors.len()))
-            .copy_from(&keep_c);
-        gather
-            .view_mut((0, n), (tree_c.len(), 1))
-            .copy_from(&(-keep_offset));
-        gather
-            .view_mut(
-                (tree_c.len(), capacitors.len()),
-                (link_l.len(), inductors.len()),
-            )
-            .copy_from(&keep_l);
-        let mut slope = DMatrix::<f64>::zeros(free + 1, free + 1);
-        slope
-            .view_mut((0, 0), (tree_c.len(), free + 1))
-            .copy_from(&slope_c);
-        slope
-            .view_mut((tree_c.len(), 0), (link_l.len(), free + 1))
-            .copy_from(&slope_l);
-        // The remaining voltages and currents, then each branch as the sum of its parts.
-        for &l in &link_c {
-            let part = parts[self.links[l]];
-            let state = state_of(part.branch);
-            let rows = part.value * (expand.row(state) * &slope);
-            link_i.set_row(l, &rows);
+        match &mass_c {
+            Some(mass) => {
+                let first = places.tree_c.start;
+                drive
+                    .solve(mass)
+                    .ok_or_else(|| self.singular(self.tree_part(first)))?;
+            }
+            None => places.tree_c.clone().for_each(|t| {
+                let farad = self.tree_part(t).value;
+                drive
+                    .row_mut(t - places.tree_c.start)
+                    .iter_mut()
+                    .for_each(|x| *x /= farad);
+            }),
         }
-        let all_slopes = &expand * &slope;
-        let coil_v = &inductance * all_slopes.rows(capacitors.len(), inductors.len());
-        for &t in &tree_l {
-            let state = state_of(parts[self.tree[t]].branch) - capacitors.len();
-            tree_v.set_row(t, &coil_v.row(state));
+        for t in places.tree_c.clone() {
+            let state = state_of[self.tree_part(t).branch];
+            slopes
+                .row_mut(state)
+                .copy_from_slice(drive.row(t - places.tree_c.start));
+            if let Some(project) = &mut project {
+                project.row_mut(state).copy_from_slice(tree_v.row(t));
+            }
         }
-        let tree_i = -(self.path.transpose() * &link_i);
-        let link_v = &self.path * &tree_v;
-        let count = circuit.branches.len();
-        let mut voltage = DMatrix::<f64>::zeros(count, free + 1);
-        let mut current = DMatrix::<f64>::zeros(count, free + 1);
-        for (k, &part) in self.tree.iter().enumerate() {
-            add_scaled(&mut voltage, parts[part].branch, &tree_v, k, 1.0);
-            current.set_row(parts[part].branch, &tree_i.row(k));
+        for l in places.link_c.clone() {
+            let state = state_of[self.link_part(l).branch];
+            for &(t, sign) in &self.tree.links[l].1 {
+                if places.tree_c.contains(&t) {
+                    slopes.add(state, drive.row(t - places.tree_c.start), sign);
+                }
+                if let Some(project) = &mut project {
+                    project.add(state, tree_v.row(t), sign);
+                }
+            }
+            let farad = self.link_part(l).value;
+            let row: Vec<f64> = slopes.row(state).iter().map(|x| farad * x).collect();
+            link_i.row_mut(l).copy_from_slice(&row);
         }
-        for (k, &part) in self.links.iter().enumerate() {
-            add_scaled(&mut voltage, parts[part].branch, &link_v, k, 1.0);
-            current.set_row(parts[part].branch, &link_i.row(k));
+        flux.slopes(self, &places, &state_of, &tree_v, &mut slopes)?;
+        for t in places.tree_l.clone() {
+            let state = state_of[self.tree_part(t).branch];
+            for (other, henry) in flux.row(state) {
+                tree_v.add(t, slopes.row(other), henry);
+            }
         }
-        self.open_branches(circuit, parts, &tree_v, &mut voltage);
-        let whole = free == n;
+        if let Some(project) = &mut project {
+            for l in places.link_l.clone() {
+                let state = state_of[self.link_part(l).branch];
+                project.row_mut(state).copy_from_slice(link_i.row(l));
+            }
+            for l in places.link_l.clone() {
+                for &(t, sign) in self.tree.links[l]
+                    .1
+                    .iter()
+                    .filter(|(t, _)| places.tree_l.contains(t))
+                {
+                    project.add(state_of[self.tree_part(t).branch], link_i.row(l), -sign);
+                }
+            }
+        }
+        let (voltage, current) = self.branches(&tree_v, &link_i);
         Ok(Mode {
-            a: &expand * slope * &gather,
-            project: if whole { None } else { Some(&expand * &gather) },
-            voltage: voltage * &gather,
-            current: current * &gather,
+            slopes,
+            project,
+            voltage,
+            current,
         })
     }
 
-    /// Voltages of branches that do not conduct, along the tree.
-    fn open_branches(
+    /// Rows of the tree capacitors' voltages; with the mass matrix where capacitors form loops.
+    fn free_voltages(
         &self,
-        circuit: &Circuit,
-        parts: &[Part],
-        tree_v: &DMatrix<f64>,
-        voltage: &mut DMatrix<f64>,
-    ) {
-        let nodes = parts.iter().map(|p| p.from.max(p.to)).max().unwrap_or(0) + 1;
-        for (number, branch) in circuit.branches.iter().enumerate() {
-            let conducts = parts.iter().any(|p| p.branch == number);
-            if conducts || branch.from >= nodes || branch.to >= nodes {
-                continue;
+        places: &Places,
+        state_of: &[usize],
+        tree_v: &mut Rows,
+    ) -> Result<Option<DMatrix<f64>>, DynamicsError> {
+        if places.link_c.is_empty() {
+            for t in places.tree_c.clone() {
+                tree_v.row_mut(t)[state_of[self.tree_part(t).branch]] = 1.0;
             }
-            for (t, sign) in walk(parts, &self.tree, nodes, branch.from, branch.to) {
-                add_scaled(voltage, number, tree_v, t, sign);
+            return Ok(None);
+        }
+        // Charge on each free node is kept: (Ct + F' Cl F) v = Ct vt + F' Cl (vl - Fe e).
+        let first = places.tree_c.start;
+        let count = places.tree_c.len();
+        let mut mass = DMatrix::zeros(count, count);
+        let mut charge = Rows::zeros(count, tree_v.width);
+        for t in places.tree_c.clone() {
+            let part = self.tree_part(t);
+            mass[(t - first, t - first)] += part.value;
+            charge.row_mut(t - first)[state_of[part.branch]] += part.value;
+        }
+        for l in places.link_c.clone() {
+            let part = self.link_part(l);
+            let path = &self.tree.links[l].1;
+            let mut kept = vec![0.0; tree_v.width];
+            kept[state_of[part.branch]] = 1.0;
+            for &(t, sign) in path.iter().filter(|(t, _)| places.tree_e.contains(t)) {
+                kept[tree_v.width - 1] -= sign * self.tree_part(t).value;
+            }
+            for &(t, sign) in path.iter().filter(|(t, _)| places.tree_c.contains(t)) {
+                charge.add(t - first, &kept, sign * part.value);
+                for &(other, other_sign) in path.iter().filter(|(t, _)| places.tree_c.contains(t)) {
+                    mass[(t - first, other - first)] += sign * other_sign * part.value;
+                }
             }
         }
-    }
-
-    fn part_of_state(&self, parts: &[Part], branch: usize) -> Option<Place> {
-        let is = |&part: &usize| {
-            parts[part].branch == branch
-                && matches!(parts[part].kind, Kind::Capacitor | Kind::Inductor)
-        };
-        self.tree
-            .iter()
-            .position(&is)
-            .map(Place::Tree)
-            .or_else(|| self.links.iter().position(is).map(Place::Link))
-    }
-}
-
-enum Place {
-    Tree(usize),
-    Link(usize),
-}
-
-fn inductance_matrix(circuit: &Circuit, inductors: &[usize]) -> DMatrix<f64> {
-    let mut matrix = DMatrix::zeros(inductors.len(), inductors.len());
-    for (k, &branch) in inductors.iter().enumerate() {
-        if let Element::Inductor { henry, .. } = circuit.branches[branch].element {
-            matrix[(k, k)] = henry;
+        if count > 0 {
+            charge
+                .solve(&mass)
+                .ok_or_else(|| self.singular(self.tree_part(first)))?;
         }
-    }
-    for coupling in &circuit.couplings {
-        let place = |branch: usize| inductors.iter().position(|&b| b == branch);
-        if let (Some(a), Some(b)) = (place(coupling.first), place(coupling.second)) {
-            matrix[(a, b)] = coupling.mutual_henry;
-            matrix[(b, a)] = coupling.mutual_henry;
+        for t in places.tree_c.clone() {
+            tree_v.row_mut(t).copy_from_slice(charge.row(t - first));
         }
+        Ok(Some(mass))
     }
-    matrix
-}
 
-fn add_scaled(
-    target: &mut DMatrix<f64>,
-    row: usize,
-    source: &DMatrix<f64>,
-    from: usize,
-    scale: f64,
-) {
-    if scale != 0.0 {
-        for column in 0..target.ncols() {
-            target[(row, column)] += scale * source[(from, column)];
+    /// v = R i in the tree, i = v / R outside it.
+    fn resistors(
+        &self,
+        places: &Places,
+        tree_v: &mut Rows,
+        link_i: &mut Rows,
+    ) -> Result<(), DynamicsError> {
+        for l in places.link_l.clone() {
+            for &(t, sign) in self.tree.links[l]
+                .1
+                .iter()
+                .filter(|(t, _)| places.tree_r.contains(t))
+            {
+                tree_v.add(t, link_i.row(l), -sign * self.tree_part(t).value);
+            }
         }
-    }
-}
-
-/// Tree parts (as positions in `tree`) on the way between two nodes, each with the sign of
-/// its voltage in the voltage of `from` against `to`.
-fn walk(parts: &[Part], tree: &[usize], nodes: usize, from: usize, to: usize) -> Vec<(usize, f64)> {
-    let mut came: Vec<Option<(usize, usize, f64)>> = vec![None; nodes];
-    let mut queue = vec![from];
-    let mut head = 0;
-    while head < queue.len() {
-        let node = queue[head];
-        head += 1;
-        for (t, &part) in tree.iter().enumerate() {
-            let part = parts[part];
-            let (other, sign) = if part.from == node {
-                (part.to, 1.0)
-            } else if part.to == node {
-                (part.from, -1.0)
+        // Tree resistors that share a loop with one outside the tree are solved together.
+        let mut shared: Vec<usize> = Vec::new();
+        for l in places.link_r.clone() {
+            for &(t, _) in self.tree.links[l]
+                .1
+                .iter()
+                .filter(|(t, _)| places.tree_r.contains(t))
+            {
+                if !shared.contains(&t) {
+                    shared.push(t);
+                }
+            }
+        }
+        if !shared.is_empty() {
+            let mut matrix = DMatrix::identity(shared.len(), shared.len());
+            let mut right = Rows::zeros(shared.len(), tree_v.width);
+            for (row, &t) in shared.iter().enumerate() {
+                right.add(row, tree_v.row(t), 1.0);
+            }
+            for l in places.link_r.clone() {
+                let ohm = self.link_part(l).value;
+                let path = &self.tree.links[l].1;
+                for &(t, sign) in path {
+                    let Some(row) = shared.iter().position(|&s| s == t) else {
+                        continue;
+                    };
+                    let through = self.tree_part(t).value * sign / ohm;
+                    for &(other, other_sign) in path {
+                        match shared.iter().position(|&s| s == other) {
+                            Some(column) => matrix[(row, column)] += through * other_sign,
+                            None => right.add(row, tree_v.row(other), -through * other_sign),
+                        }
+                    }
+                }
+            }
+            if let [only] = shared[..] {
+                let scale = 1.0 / matrix[(0, 0)];
+                right.row_mut(0).iter_mut().for_each(|x| *x *= scale);
+                tree_v.row_mut(only).copy_from_slice(right.row(0));
             } else {
-                continue;
-            };
-            if other != from && came[other].is_none() {
-                came[other] = Some((node, t, sign));
-                queue.push(other);
+                right
+                    .solve(&matrix)
+                    .ok_or_else(|| self.singular(self.tree_part(shared[0])))?;
+                for (row, &t) in shared.iter().enumerate() {
+                    tree_v.row_mut(t).copy_from_slice(right.row(row));
+                }
             }
         }
+        for l in places.link_r.clone() {
+            let ohm = self.link_part(l).value;
+            for &(t, sign) in &self.tree.links[l].1 {
+                link_i.add(l, tree_v.row(t), sign / ohm);
+            }
+        }
+        Ok(())
     }
-    let mut steps = Vec::new();
-    let mut node = to;
-    while node != from {
-        let Some((previous, t, sign)) = came[node] else {
-            break;
+
+    /// Voltage and current of each branch from those of its parts.
+    fn branches(&self, tree_v: &Rows, link_i: &Rows) -> (Rows, Rows) {
+        let count = self.circuit.branches.len();
+        let mut voltage = Rows::zeros(count, tree_v.width);
+        let mut current = Rows::zeros(count, tree_v.width);
+        for (t, &part) in self.tree.tree.iter().enumerate() {
+            voltage.add(self.parts[part].branch, tree_v.row(t), 1.0);
+        }
+        // A branch of two parts in series has one current: that of its first part. What flows
+        // in a tree part is what the links that pass through it carry.
+        let first =
+            |part: usize| part == 0 || self.parts[part - 1].branch != self.parts[part].branch;
+        for (l, (part, path)) in self.tree.links.iter().enumerate() {
+            let branch = self.parts[*part].branch;
+            if first(*part) {
+                current.add(branch, link_i.row(l), 1.0);
+            }
+            for &(t, sign) in path {
+                voltage.add(branch, tree_v.row(t), sign);
+                let passed = self.tree.tree[t];
+                if first(passed) {
+                    current.add(self.parts[passed].branch, link_i.row(l), -sign);
+                }
+            }
+        }
+        let conducts: Vec<bool> = (0..count)
+            .map(|branch| self.parts.iter().any(|p| p.branch == branch))
+            .collect();
+        if conducts.contains(&false) {
+            let nodes = node_count(self.parts);
+            let routes = Routes::of(self.parts, &self.tree.tree, nodes);
+            for (number, branch) in self.circuit.branches.iter().enumerate() {
+                if !conducts[number] && branch.from < nodes && branch.to < nodes {
+                    for (t, sign) in routes.between(branch.from, branch.to) {
+                        voltage.add(number, tree_v.row(t), sign);
+                    }
+                }
+            }
+        }
+        (voltage, current)
+    }
+}
+
+fn range(kinds: impl Iterator<Item = Kind> + Clone, wanted: Kind) -> Range<usize> {
+    let start = kinds.clone().filter(|&kind| kind < wanted).count();
+    start..start + kinds.filter(|&kind| kind == wanted).count()
+}
+
+/// The coils: their inductances, couplings and cut-sets.
+struct Flux {
+    /// State number of the first coil.
+    first: usize,
+    /// Henries, by coil.
+    own: Vec<f64>,
+    /// Pairs of coil numbers with their mutual inductance.
+    mutual: Vec<(usize, usize, f64)>,
+    /// Whether every coil's slope is its own voltage over its own inductance.
+    plain: bool,
+}
+
+impl Flux {
+    fn of(equations: &Equations<'_>, places: &Places, state_of: &[usize], first: usize) -> Self {
+        let circuit = equations.circuit;
+        let own: Vec<f64> = circuit
+            .branches
+            .iter()
+            .filter_map(|b| {
+                if let Element::Inductor { henry, .. } = b.element {
+                    Some(henry)
+                } else {
+                    None
+                }
+            })
+            .collect();
+        let coil = |branch: usize| {
+            state_of
+                .get(branch)
+                .and_then(|s| s.checked_sub(first))
+                .filter(|&k| k < own.len())
         };
-        steps.push((t, sign));
-        node = previous;
+        let mutual: Vec<(usize, usize, f64)> = circuit
+            .couplings
+            .iter()
+            .filter_map(|c| Some((coil(c.first)?, coil(c.second)?, c.mutual_henry)))
+            .collect();
+        let plain = mutual.is_empty() && places.tree_l.is_empty();
+        Self {
+            first,
+            own,
+            mutual,
+            plain,
+        }
     }
-    steps
+
+    /// Inductances in the row of a coil's state: (other coil's state, henries).
+    fn row(&self, state: usize) -> Vec<(usize, f64)> {
+        let k = state - self.first;
+        let mut row = vec![(state, self.own[k])];
+        for &(a, b, henry) in &self.mutual {
+            if a == k {
+                row.push((b + self.first, henry));
+            }
+            if b == k {
+                row.push((a + self.first, henry));
+            }
+        }
+        row
+    }
+
+    /// Entry (coil, link coil): the link's current in each coil.
+    fn spread(
+        &self,
+        equations: &Equations<'_>,
+        places: &Places,
+        state_of: &[usize],
+    ) -> DMatrix<f64> {
+        let mut spread = DMatrix::zeros(self.own.len(), places.link_l.len());
+        for l in places.link_l.clone() {
+            let column = l - places.link_l.start;
+            spread[(state_of[equations.link_part(l).branch] - self.first, column)] = 1.0;
+            for &(t, sign) in equations.tree.links[l]
+                .1
+                .iter()
+                .filter(|(t, _)| places.tree_l.contains(t))
+            {
+                spread[(state_of[equations.tree_part(t).branch] - self.first, column)] -= sign;
+            }
+        }
+        spread
+    }
+
+    fn matrix(&self) -> DMatrix<f64> {
+        let count = self.own.len();
+        let mut matrix = DMatrix::from_diagonal(&nalgebra::DVector::from_row_slice(&self.own));
+        for &(a, b, henry) in self
+            .mutual
+            .iter()
+            .filter(|(a, b, _)| *a < count && *b < count)
+        {
+            matrix[(a, b)] += henry;
+            matrix[(b, a)] += henry;
+        }
+        matrix
+    }
+
+    /// Rows of the link coils' currents, flux kept where coils form cut-sets.
+    fn free_currents(
+        &self,
+        equations: &Equations<'_>,
+        places: &Places,
+        state_of: &[usize],
+        link_i: &mut Rows,
+    ) -> Result<(), DynamicsError> {
+        if places.tree_l.is_empty() {
+            for l in places.link_l.clone() {
+                link_i.row_mut(l)[state_of[equations.link_part(l).branch]] = 1.0;
+            }
+            return Ok(());
+        }
+        if places.link_l.is_empty() {
+            return Ok(());
+        }
+        let spread = self.spread(equations, places, state_of);
+        let kept = spread.transpose() * self.matrix();
+        let solved = (&kept * &spread)
+            .lu()
+            .solve(&kept)
+            .ok_or_else(|| equations.singular(equations.link_part(places.link_l.start)))?;
+        for l in places.link_l.clone() {
+            for coil in 0..self.own.len() {
+                link_i.row_mut(l)[self.first + coil] = solved[(l - places.link_l.start, coil)];
+            }
+        }
+        Ok(())
+    }
+
+    /// Slopes of every coil from the voltages around its loop.
+    fn slopes(
+        &self,
+        equations: &Equations<'_>,
+        places: &Places,
+        state_of: &[usize],
+        tree_v: &Rows,
+        slopes: &mut Rows,
+    ) -> Result<(), DynamicsError> {
+        if places.link_l.is_empty() {
+            return Ok(());
+        }
+        let mut drive = Rows::zeros(places.link_l.len(), tree_v.width);
+        for l in places.link_l.clone() {
+            for &(t, sign) in equations.tree.links[l]
+                .1
+                .iter()
+                .filter(|(t, _)| !places.tree_l.contains(t))
+            {
+                drive.add(l - places.link_l.start, tree_v.row(t), sign);
+            }
+        }
+        if self.plain {
+            for l in places.link_l.clone() {
+                let state = state_of[equations.link_part(l).branch];
+                slopes.add(
+                    state,
+                    drive.row(l - places.link_l.start),
+                    1.0 / self.own[state - self.first],
+                );
+            }
+            return Ok(());
+        }
+        let spread = self.spread(equations, places, state_of);
+        drive
+            .solve(&(spread.transpose() * self.matrix() * &spread))
+            .ok_or_else(|| equations.singular(equations.link_part(places.link_l.start)))?;
+        for coil in 0..self.own.len() {
+            for k in 0..places.link_l.len() {
+                slopes.add(self.first + coil, drive.row(k), spread[(coil, k)]);
+            }
+        }
+        Ok(())
+    }
 }

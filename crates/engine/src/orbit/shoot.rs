@@ -3,7 +3,7 @@
 use super::flow::{Flow, Square, State, first_fall};
 use super::{ClockStep, OrbitError};
 use crate::circuit::{Circuit, Element};
-use crate::dynamics;
+use crate::dynamics::{self, Rows};
 use nalgebra::{Const, DimMin};
 use std::cell::OnceCell;
 
@@ -181,36 +181,30 @@ impl<const N: usize> Solver<'_, N> {
             return Ok(found);
         }
         let mode = dynamics::mode(self.circuit, conducting)?;
-        let n = mode.a.nrows() - 1;
+        let n = mode.slopes.len();
         // The states beyond the circuit's own only decay; the constant comes last.
-        let place = |k: usize| if k == n { N - 1 } else { k };
-        let widen = |m: &nalgebra::DMatrix<f64>, filler: f64| {
-            let mut wide = Square::<N>::zeros();
+        let wide = |row: &[f64]| {
+            let mut state = State::<N>::zeros();
+            state.as_mut_slice()[..n].copy_from_slice(&row[..n]);
+            state[N - 1] = row[n];
+            state
+        };
+        let square = |rows: &Rows, filler: f64, constant: f64| {
+            let mut matrix = Square::<N>::zeros();
+            for k in 0..n {
+                matrix.set_row(k, &wide(rows.row(k)).transpose());
+            }
             for k in n..N - 1 {
-                wide[(k, k)] = filler;
+                matrix[(k, k)] = filler;
             }
-            for row in 0..=n {
-                for column in 0..=n {
-                    wide[(place(row), place(column))] = m[(row, column)];
-                }
-            }
-            wide
+            matrix[(N - 1, N - 1)] = constant;
+            matrix
         };
-        let rows = |m: &nalgebra::DMatrix<f64>| -> Vec<State<N>> {
-            (0..m.nrows())
-                .map(|k| {
-                    let mut row = State::<N>::zeros();
-                    for column in 0..=n {
-                        row[place(column)] = m[(k, column)];
-                    }
-                    row
-                })
-                .collect()
-        };
+        let rows = |rows: &Rows| (0..rows.len()).map(|k| wide(rows.row(k))).collect();
         self.modes.push(SizedMode {
             conducting,
-            a: widen(&mode.a, -1.0 / self.period_s),
-            project: mode.project.as_ref().map(|p| widen(p, 1.0)),
+            a: square(&mode.slopes, -1.0 / self.period_s, 0.0),
+            project: mode.project.as_ref().map(|p| square(p, 1.0, 1.0)),
             voltage: rows(&mode.voltage),
             current: rows(&mode.current),
         });
