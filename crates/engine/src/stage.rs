@@ -213,18 +213,28 @@ impl Stage {
         orbit::solve(&layout.circuit, &[on, off])
     }
 
-    /// Only what sizing asks: the drain voltage and slope at turn-on, and the powers.
+    /// Only what soft switching asks: drain voltage (volts) and slope (volts per second) just
+    /// before turn-on, and the carrier power in the load (watts).
+    ///
+    /// # Errors
+    /// Where there is no periodic state.
+    pub fn turn_on(&self) -> Result<(f64, f64, f64), OrbitError> {
+        let layout = self.layout();
+        let orbit = self.solve_layout(&layout)?;
+        let (v, slope) = orbit.before_end(Probe::Voltage(layout.switch));
+        let i1 = orbit.harmonics(Probe::Current(layout.load), 1)[1].norm();
+        Ok((v, slope, 2.0 * i1 * i1 * self.load.r_ohm))
+    }
+
+    /// What the search for the least loss asks: carrier power, supply power and drain peak.
     ///
     /// # Errors
     /// Where there is no periodic state.
     pub fn probe(&self) -> Result<Probed, OrbitError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
-        let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(Probe::Voltage(layout.switch));
         let i1 = orbit.harmonics(Probe::Current(layout.load), 1)[1].norm();
         Ok(Probed {
-            turn_on_v,
-            turn_on_slope_v_per_s,
             output_power_w: 2.0 * i1 * i1 * self.load.r_ohm,
             supply_power_w: -self.supply_v * orbit.mean(Probe::Current(layout.supply)),
             drain_peak_v: orbit.extremes(Probe::Voltage(layout.switch)).greatest,
@@ -269,13 +279,9 @@ impl Stage {
     }
 }
 
-/// What sizing asks of a stage.
+/// What the search for the least loss asks of a stage.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Probed {
-    /// Drain voltage just before turn-on, volts.
-    pub turn_on_v: f64,
-    /// Its slope, volts per second.
-    pub turn_on_slope_v_per_s: f64,
     /// Carrier power in the load, watts.
     pub output_power_w: f64,
     /// Power from the supply, watts.

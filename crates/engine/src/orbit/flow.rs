@@ -147,7 +147,7 @@ fn balanced_norm<const N: usize>(a: &Square<N>) -> f64 {
         .fold(0.0, f64::max)
 }
 
-/// Where a quantity first falls below zero within a stretch.
+/// Where a row first rises above zero within a stretch.
 pub(super) struct Crossing<const N: usize> {
     /// Time into the stretch.
     pub(super) at: f64,
@@ -155,37 +155,71 @@ pub(super) struct Crossing<const N: usize> {
     pub(super) state: State<N>,
 }
 
-/// Narrows a change that lies within the rung that starts at `x`: `passed` tells from a
-/// state whether it lies behind the change. Ends within one first rung by halving, then
-/// by `refine` on the series there.
+/// Narrows a change that lies within the rung that starts at `x`: the first instant at which
+/// one of `rows` rises above zero. Halves down to one first rung, then solves the series
+/// there.
 pub(super) fn narrow<const N: usize>(
     flow: &Flow<N>,
     mut x: State<N>,
     mut at: f64,
     rung: usize,
-    passed: impl Fn(&State<N>) -> bool,
+    rows: &[State<N>],
 ) -> Crossing<N> {
     for k in (0..rung).rev() {
         let middle = flow.advance(k, &x);
-        if !passed(&middle) {
+        if rows.iter().all(|row| row.dot(&middle) <= 0.0) {
             x = middle;
             at += flow.rung_duration(k);
         }
     }
     let terms = flow.series(&x);
-    let (mut low, mut high) = (0.0, 1.0);
-    for _ in 0..52 {
-        let middle = 0.5 * (low + high);
-        if passed(&series_at(&terms, middle)) {
-            high = middle;
-        } else {
-            low = middle;
-        }
-    }
+    let fraction = rows
+        .iter()
+        .map(|row| first_rise(&terms.map(|term| row.dot(&term))))
+        .fold(1.0, f64::min);
     Crossing {
-        at: at + high * flow.step,
-        state: series_at(&terms, high),
+        at: at + fraction * flow.step,
+        state: series_at(&terms, fraction),
     }
+}
+
+/// Where the polynomial with these coefficients rises above zero in 0..=1 (1 where it does
+/// not): Newton's method kept within a shrinking bracket.
+fn first_rise(c: &[f64; TERMS + 1]) -> f64 {
+    const MOST_STEPS: usize = 80;
+    let value_and_slope = |t: f64| {
+        let (mut value, mut slope) = (c[TERMS], 0.0);
+        for k in (0..TERMS).rev() {
+            slope = slope * t + value;
+            value = value * t + c[k];
+        }
+        (value, slope)
+    };
+    let (mut low, mut high) = (0.0, 1.0);
+    if c[0] > 0.0 {
+        return 0.0;
+    }
+    if value_and_slope(1.0).0 <= 0.0 {
+        return 1.0;
+    }
+    let mut t = 0.5;
+    for _ in 0..MOST_STEPS {
+        let (value, slope) = value_and_slope(t);
+        if value > 0.0 {
+            high = t;
+        } else {
+            low = t;
+        }
+        let mut next = t - value / slope;
+        if !(next > low && next < high) {
+            next = 0.5 * (low + high);
+        }
+        if (next - t).abs() <= 1e-15 || high - low <= 1e-15 {
+            return high.min(next.max(low));
+        }
+        t = next;
+    }
+    high
 }
 
 /// Where `row` . x first falls below zero: by a change of sign between cells, or by a dip
@@ -196,7 +230,8 @@ pub(super) fn first_fall<const N: usize>(
     row: &State<N>,
     tolerance: f64,
 ) -> Option<Crossing<N>> {
-    let slope_row = flow.a.transpose() * row;
+    let slope_row = flow.a.tr_mul(row);
+    let below = -row;
     let cell = flow.cell_rung();
     let width = flow.rung_duration(cell);
     let mut left = *x;
@@ -204,14 +239,12 @@ pub(super) fn first_fall<const N: usize>(
         let at = k as f64 * width;
         let right = flow.advance(cell, &left);
         if row.dot(&right) < -tolerance {
-            return Some(narrow(flow, left, at, cell, |s| row.dot(s) < 0.0));
+            return Some(narrow(flow, left, at, cell, &[below]));
         }
         if slope_row.dot(&left) < 0.0 && slope_row.dot(&right) > 0.0 {
-            let bottom = narrow(flow, left, at, cell, |s| slope_row.dot(s) > 0.0);
+            let bottom = narrow(flow, left, at, cell, &[slope_row]);
             if row.dot(&bottom.state) < -tolerance {
-                return Some(narrow(flow, left, at, cell, |s| {
-                    row.dot(s) < 0.0 || slope_row.dot(s) > 0.0
-                }));
+                return Some(narrow(flow, left, at, cell, &[below, slope_row]));
             }
         }
         left = right;

@@ -146,7 +146,7 @@ impl<const N: usize> Orbit for Solution<N> {
         for piece in &self.pieces {
             let flow = &self.flows[piece.flow];
             let row = self.row(piece, probe);
-            let slope_row = flow.a.transpose() * row;
+            let slope_row = flow.a.tr_mul(&row);
             let cell = flow.cell_rung();
             let width = flow.rung_duration(cell);
             let mut left = piece.start;
@@ -157,7 +157,7 @@ impl<const N: usize> Orbit for Solution<N> {
                 look(row.dot(&right), piece.start_s + at + width);
                 let (before, after) = (slope_row.dot(&left), slope_row.dot(&right));
                 if before * after < 0.0 {
-                    let top = narrow(flow, left, at, cell, |s| slope_row.dot(s) * after > 0.0);
+                    let top = narrow(flow, left, at, cell, &[slope_row * after.signum()]);
                     look(row.dot(&top.state), piece.start_s + top.at);
                 }
                 left = right;

@@ -265,14 +265,11 @@ impl Search<'_> {
                 return None;
             }
         }
-        let probed = self.stage(point, way).probe().ok()?;
+        let (turn_on_v, slope, power_w) = self.stage(point, way).turn_on().ok()?;
         let v = point.supply_v;
-        let mut conditions = vec![
-            probed.turn_on_v / v,
-            probed.turn_on_slope_v_per_s / (v * self.problem.omega()),
-        ];
+        let mut conditions = vec![turn_on_v / v, slope / (v * self.problem.omega())];
         if self.seeks_power {
-            conditions.push(probed.output_power_w / self.problem.power_w? - 1.0);
+            conditions.push(power_w / self.problem.power_w? - 1.0);
         }
         let conditions = DVector::from_vec(conditions);
         conditions
