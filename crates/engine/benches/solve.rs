@@ -41,14 +41,17 @@ fn solves(c: &mut Criterion) {
     c.bench_function("equations of one mode", |b| {
         b.iter(|| evenfall_engine::dynamics::mode(black_box(&circuit), black_box(1)));
     });
-    c.bench_function("steady state, four states", |b| {
-        b.iter(|| black_box(&plain).probe())
-    });
-    c.bench_function("steady state with diode", |b| {
-        b.iter(|| black_box(&diode).probe())
-    });
-    c.bench_function("every figure and waveform", |b| {
+    c.bench_function("steady state of four states, every figure", |b| {
         b.iter(|| black_box(&plain).solve())
+    });
+    c.bench_function("the same with diode intervals", |b| {
+        b.iter(|| black_box(&diode).solve())
+    });
+    c.bench_function("what sizing asks of a stage", |b| {
+        b.iter(|| black_box(&plain).turn_on())
+    });
+    c.bench_function("figures and waveforms", |b| {
+        b.iter(|| black_box(&plain).solve_with_waveforms())
     });
     let design = link::base();
     c.bench_function("a full sizing", |b| {

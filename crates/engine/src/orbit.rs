@@ -139,12 +139,12 @@ pub trait Orbit {
     fn mean(&self, probe: Probe) -> f64;
     /// Lowest and highest value.
     fn extremes(&self, probe: Probe) -> Extremes;
-    /// Complex Fourier coefficients 0..=count: mean of x(t) exp(-j k w t).
-    fn harmonics(&self, probe: Probe, count: usize) -> Vec<Complex64>;
+    /// Complex Fourier coefficients 0..=count of each quantity: mean of x(t) exp(-j k w t).
+    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>>;
     /// Value and slope (per second) just before the period ends.
     fn before_end(&self, probe: Probe) -> (f64, f64);
-    /// `count + 1` samples at equal steps from the period's start to its end.
-    fn samples(&self, probe: Probe, count: usize) -> Vec<f64>;
+    /// `count + 1` samples of each quantity at equal steps from the period's start to its end.
+    fn samples(&self, probes: &[Probe], count: usize) -> Vec<Vec<f64>>;
     /// Fraction of the period in which a switching branch conducts.
     fn conducting_fraction(&self, branch: usize) -> f64;
     /// Energy that charge lost in jumps at the clock's instants in one period, joules
@@ -170,5 +170,5 @@ pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, O
             }
         };
     }
-    sized!(6, 9, 17)
+    sized!(5, 6, 9, 17)
 }

@@ -14,7 +14,7 @@ mod verdict;
 
 pub use ideal::{Ideal, ideal};
 
-use crate::answer::{Answer, Refusal, Solved};
+use crate::answer::{Answer, Refusal, Solved, Waveforms};
 use crate::design::{Aim, Design};
 use crate::stage::{Reading, Stage, StageError};
 use problem::Problem;
@@ -109,7 +109,7 @@ impl std::error::Error for SizingError {}
 /// Sizes and solves a design: the whole answer, as the design file's result object states it.
 pub fn solve(design: &Design) -> Answer {
     match sized(design) {
-        Ok((stage, reading, notes)) => {
+        Ok((stage, reading, waveforms, notes)) => {
             let verdicts = verdict::judge(design, &stage, &reading);
             Answer::Solved(Solved {
                 values: stage.values(),
@@ -119,7 +119,7 @@ pub fn solve(design: &Design) -> Answer {
                 balance: reading.balance,
                 verdicts,
                 notes,
-                waveforms: reading.waveforms,
+                waveforms,
                 drain_harmonics_v: reading.drain_harmonics_v,
                 load_harmonics_a: reading.load_harmonics_a,
             })
@@ -135,13 +135,13 @@ pub fn solve(design: &Design) -> Answer {
 ///
 /// # Errors
 /// See [`SizingError`].
-pub fn sized(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError> {
+pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>), SizingError> {
     let problem = Problem::of(design)?;
     let mut notes = problem.notes.clone();
     let mut stage = newton::size(&problem, &mut notes)?;
     if design.stage.aim == Aim::LeastLoss {
         stage = least_loss::improve(&problem, stage, &mut notes)?;
     }
-    let reading = stage.solve().map_err(SizingError::Stage)?;
-    Ok((stage, reading, notes))
+    let (reading, waveforms) = stage.solve_with_waveforms().map_err(SizingError::Stage)?;
+    Ok((stage, reading, waveforms, notes))
 }

@@ -5,8 +5,10 @@ use crate::answer::{Figures, Losses, Values, Waveforms};
 use crate::circuit::{Circuit, Element};
 use crate::design::{Capacitor, Coil, Diode, Load};
 use crate::orbit::{self, ClockStep, Orbit, OrbitError, Probe};
+use num_complex::Complex64;
 use std::f64::consts::TAU;
 use std::fmt;
+use std::ops::Range;
 
 /// Unaccounted part of the supply power above which a solve is an error.
 pub const BALANCE_BOUND: f64 = 1e-9;
@@ -222,7 +224,7 @@ impl Stage {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
         let (v, slope) = orbit.before_end(Probe::Voltage(layout.switch));
-        let i1 = orbit.harmonics(Probe::Current(layout.load), 1)[1].norm();
+        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1].norm();
         Ok((v, slope, 2.0 * i1 * i1 * self.load.r_ohm))
     }
 
@@ -233,7 +235,7 @@ impl Stage {
     pub fn probe(&self) -> Result<Probed, OrbitError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
-        let i1 = orbit.harmonics(Probe::Current(layout.load), 1)[1].norm();
+        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1].norm();
         Ok(Probed {
             output_power_w: 2.0 * i1 * i1 * self.load.r_ohm,
             supply_power_w: -self.supply_v * orbit.mean(Probe::Current(layout.supply)),
@@ -246,11 +248,26 @@ impl Stage {
     /// # Errors
     /// Where there is no periodic state, or it fails its own power balance.
     pub fn solve(&self) -> Result<Reading, StageError> {
+        self.solve_with(|_, _| ()).map(|(reading, ())| reading)
+    }
+
+    /// The same with the curves over one period.
+    ///
+    /// # Errors
+    /// As [`Self::solve`].
+    pub fn solve_with_waveforms(&self) -> Result<(Reading, Waveforms), StageError> {
+        self.solve_with(waveforms)
+    }
+
+    fn solve_with<T>(
+        &self,
+        more: fn(&Layout, &dyn Orbit) -> T,
+    ) -> Result<(Reading, T), StageError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
         let reading = read(self, &layout, orbit.as_ref());
         if reading.balance.abs() <= BALANCE_BOUND {
-            Ok(reading)
+            Ok((reading, more(&layout, orbit.as_ref())))
         } else {
             Err(StageError::Balance {
                 balance: reading.balance,
@@ -301,8 +318,6 @@ pub struct Reading {
     pub harmonics_dbc: Vec<f64>,
     /// Unaccounted part of the supply power, relative.
     pub balance: f64,
-    /// Curves over one period.
-    pub waveforms: Waveforms,
     /// Drain voltage's harmonics 0..=20, volts.
     pub drain_harmonics_v: Vec<f64>,
     /// Load current's harmonics 0..=20, amperes.
@@ -318,8 +333,8 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
     let supply_current_a = -orbit.mean(Probe::Current(layout.supply));
     let supply_power_w = stage.supply_v * supply_current_a;
     let total_output_power_w = ohmic(layout.load, stage.load.r_ohm);
-    let load_harmonics_a = amplitudes(orbit, Probe::Current(layout.load));
-    let drain_harmonics_v = amplitudes(orbit, drain);
+    let [load_harmonics_a, drain_harmonics_v] =
+        amplitudes(orbit, [Probe::Current(layout.load), drain]);
     let carrier_a = load_harmonics_a[1];
     let output_power_w = 0.5 * carrier_a * carrier_a * stage.load.r_ohm;
     let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(drain);
@@ -360,7 +375,6 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
             .iter()
             .map(|a| 20.0 * libm::log10(a / carrier_a))
             .collect(),
-        waveforms: waveforms(layout, orbit),
         figures,
         losses,
         drain_harmonics_v,
@@ -405,42 +419,47 @@ impl Discharge {
     }
 }
 
-fn amplitudes(orbit: &dyn Orbit, probe: Probe) -> Vec<f64> {
-    let mut sizes: Vec<f64> = orbit
-        .harmonics(probe, HARMONICS)
-        .iter()
-        .map(|c| 2.0 * c.norm())
-        .collect();
-    sizes[0] *= 0.5;
-    sizes
+/// Peak of each sinusoid, orders 0 (the mean) to [`HARMONICS`].
+fn amplitudes<const M: usize>(orbit: &dyn Orbit, probes: [Probe; M]) -> [Vec<f64>; M] {
+    let mut harmonics = orbit.harmonics(&probes, HARMONICS).into_iter();
+    probes.map(|_| {
+        let coefficients = harmonics.next().unwrap_or_default();
+        let size =
+            |(order, c): (usize, Complex64)| if order == 0 { c.norm() } else { 2.0 * c.norm() };
+        coefficients.into_iter().enumerate().map(size).collect()
+    })
 }
 
 fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
-    let sum = |probes: &[Probe]| {
+    let capacitors = [layout.device, layout.shunt]
+        .into_iter()
+        .flatten()
+        .map(Probe::Current);
+    let load = [Some(layout.load), layout.load_reactance]
+        .into_iter()
+        .flatten()
+        .map(Probe::Voltage);
+    let (capacitors, load): (Vec<_>, Vec<_>) = (capacitors.collect(), load.collect());
+    let mut probes = vec![Probe::Voltage(layout.switch), Probe::Current(layout.switch)];
+    probes.extend(capacitors.iter().chain(&load));
+    let curves = orbit.samples(&probes, SAMPLES);
+    let sum = |range: Range<usize>| {
         let mut total = vec![0.0; SAMPLES + 1];
-        for &probe in probes {
-            for (sum, value) in total.iter_mut().zip(orbit.samples(probe, SAMPLES)) {
-                *sum += value;
-            }
+        for curve in &curves[range] {
+            total
+                .iter_mut()
+                .zip(curve)
+                .for_each(|(sum, value)| *sum += value);
         }
         total
     };
-    let capacitors: Vec<Probe> = [layout.device, layout.shunt]
-        .into_iter()
-        .flatten()
-        .map(Probe::Current)
-        .collect();
-    let load: Vec<Probe> = [Some(layout.load), layout.load_reactance]
-        .into_iter()
-        .flatten()
-        .map(Probe::Voltage)
-        .collect();
+    let load_from = 2 + capacitors.len();
     let step = orbit.period_s() / SAMPLES as f64;
     Waveforms {
         t_s: (0..=SAMPLES).map(|k| k as f64 * step).collect(),
-        drain_v: sum(&[Probe::Voltage(layout.switch)]),
-        switch_a: sum(&[Probe::Current(layout.switch)]),
-        capacitor_a: sum(&capacitors),
-        load_v: sum(&load),
+        drain_v: sum(0..1),
+        switch_a: sum(1..2),
+        capacitor_a: sum(2..load_from),
+        load_v: sum(load_from..probes.len()),
     }
 }

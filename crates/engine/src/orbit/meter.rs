@@ -166,17 +166,19 @@ impl<const N: usize> Orbit for Solution<N> {
         found
     }
 
-    fn harmonics(&self, probe: Probe, count: usize) -> Vec<Complex64> {
+    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>> {
         let omega = TAU / self.period_s;
-        let mut sums = vec![Complex64::new(0.0, 0.0); count + 1];
+        let mut sums = vec![vec![Complex64::new(0.0, 0.0); count + 1]; probes.len()];
         for piece in &self.pieces {
-            let row = self.row(piece, probe);
             let parts = fourier(&self.flows[piece.flow], &piece.start, omega, count);
             let turn = cis(-omega * piece.start_s);
-            let mut phase = Complex64::new(1.0 / self.period_s, 0.0);
-            for (sum, (re, im)) in sums.iter_mut().zip(&parts) {
-                *sum += Complex64::new(row.dot(re), row.dot(im)) * phase;
-                phase *= turn;
+            for (sums, &probe) in sums.iter_mut().zip(probes) {
+                let row = self.row(piece, probe);
+                let mut phase = Complex64::new(1.0 / self.period_s, 0.0);
+                for (sum, (re, im)) in sums.iter_mut().zip(&parts) {
+                    *sum += Complex64::new(row.dot(re), row.dot(im)) * phase;
+                    phase *= turn;
+                }
             }
         }
         sums
@@ -193,48 +195,39 @@ impl<const N: usize> Orbit for Solution<N> {
         )
     }
 
-    fn samples(&self, probe: Probe, count: usize) -> Vec<f64> {
-        let step = self.period_s / count.max(1) as f64;
-        let mut samples = Vec::with_capacity(count + 1);
+    fn samples(&self, probes: &[Probe], count: usize) -> Vec<Vec<f64>> {
+        let count = count.max(1);
+        let step = self.period_s / count as f64;
+        let mut samples = vec![Vec::with_capacity(count + 1); probes.len()];
         let mut index = 0;
         for (number, piece) in self.pieces.iter().enumerate() {
-            let row = self.row(piece, probe);
+            let rows: Vec<State<N>> = probes.iter().map(|&probe| self.row(piece, probe)).collect();
+            let mut note = |x: &State<N>| {
+                for (samples, row) in samples.iter_mut().zip(&rows) {
+                    samples.push(row.dot(x));
+                }
+            };
             let last = number + 1 == self.pieces.len();
             let end_s = piece.start_s + piece.duration_s;
-            let mut stepper: Option<Flow<N>> = None;
+            // To the first sample within the piece, then by equal steps.
+            let mut stride = index as f64 * step - piece.start_s;
+            let mut flow: Option<Flow<N>> = None;
             let mut x = piece.start;
-            let mut at = piece.start_s;
-            while index <= count {
-                let wanted = index as f64 * step;
-                if !last && wanted >= end_s {
-                    break;
+            while index < count && (last || (index as f64 * step) < end_s) {
+                if flow.is_none() && stride > 0.0 {
+                    flow = Flow::new(&self.modes[piece.mode].a, stride);
                 }
-                if last && index == count {
-                    samples.push(row.dot(&piece.end));
-                    index += 1;
-                    break;
+                if let Some(flow) = &flow {
+                    x = flow.end(&x);
                 }
-                let ahead = wanted - at;
-                if ahead > 0.0 {
-                    let regular = at > piece.start_s;
-                    if !regular {
-                        match Flow::new(&self.modes[piece.mode].a, ahead) {
-                            Some(flow) => x = flow.end(&x),
-                            None => return Vec::new(),
-                        }
-                    } else {
-                        if stepper.is_none() {
-                            stepper = Flow::new(&self.modes[piece.mode].a, step);
-                        }
-                        match &stepper {
-                            Some(flow) => x = flow.end(&x),
-                            None => return Vec::new(),
-                        }
-                    }
-                    at = wanted;
+                if stride != step {
+                    (stride, flow) = (step, None);
                 }
-                samples.push(row.dot(&x));
+                note(&x);
                 index += 1;
+            }
+            if last {
+                note(&piece.end);
             }
         }
         samples
