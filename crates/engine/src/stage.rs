@@ -224,7 +224,8 @@ impl Stage {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
         let (v, slope) = orbit.before_end(Probe::Voltage(layout.switch));
-        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1].norm();
+        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1];
+        let i1 = i1.norm_sqr().sqrt();
         Ok((v, slope, 2.0 * i1 * i1 * self.load.r_ohm))
     }
 
@@ -235,7 +236,8 @@ impl Stage {
     pub fn probe(&self) -> Result<Probed, OrbitError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
-        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1].norm();
+        let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1];
+        let i1 = i1.norm_sqr().sqrt();
         Ok(Probed {
             output_power_w: 2.0 * i1 * i1 * self.load.r_ohm,
             supply_power_w: -self.supply_v * orbit.mean(Probe::Current(layout.supply)),
@@ -424,8 +426,13 @@ fn amplitudes<const M: usize>(orbit: &dyn Orbit, probes: [Probe; M]) -> [Vec<f64
     let mut harmonics = orbit.harmonics(&probes, HARMONICS).into_iter();
     probes.map(|_| {
         let coefficients = harmonics.next().unwrap_or_default();
-        let size =
-            |(order, c): (usize, Complex64)| if order == 0 { c.norm() } else { 2.0 * c.norm() };
+        let size = |(order, c): (usize, Complex64)| {
+            if order == 0 {
+                c.norm_sqr().sqrt()
+            } else {
+                2.0 * c.norm_sqr().sqrt()
+            }
+        };
         coefficients.into_iter().enumerate().map(size).collect()
     })
 }

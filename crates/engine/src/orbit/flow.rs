@@ -199,10 +199,11 @@ fn first_rise(c: &[f64; TERMS + 1]) -> f64 {
     if c[0] > 0.0 {
         return 0.0;
     }
-    if value_and_slope(1.0).0 <= 0.0 {
+    let at_end = value_and_slope(1.0).0;
+    if at_end <= 0.0 {
         return 1.0;
     }
-    let mut t = 0.5;
+    let mut t = c[0] / (c[0] - at_end);
     for _ in 0..MOST_STEPS {
         let (value, slope) = value_and_slope(t);
         if value > 0.0 {

@@ -85,6 +85,22 @@ impl<const N: usize> Solution<N> {
         }
     }
 
+    /// The states at the ends of each piece's cells.
+    fn grids(&self) -> &[Vec<State<N>>] {
+        self.grids.get_or_init(|| {
+            let grid = |piece: &Piece<N>| {
+                let flow = &self.flows[piece.flow];
+                let mut states = Vec::with_capacity((1 << CELLS_LOG2) + 1);
+                states.push(piece.start);
+                for k in 0..1usize << CELLS_LOG2 {
+                    states.push(flow.advance(flow.cell_rung(), &states[k]));
+                }
+                states
+            };
+            self.pieces.iter().map(grid).collect()
+        })
+    }
+
     fn moments(&self) -> &[Square<N>] {
         self.moments.get_or_init(|| {
             self.pieces
@@ -142,25 +158,32 @@ impl<const N: usize> Orbit for Solution<N> {
             if value > found.greatest {
                 (found.greatest, found.greatest_at_s) = (value, at);
             }
+            (found.least, found.greatest)
         };
-        for piece in &self.pieces {
+        for (piece, grid) in self.pieces.iter().zip(self.grids()) {
             let flow = &self.flows[piece.flow];
             let row = self.row(piece, probe);
             let slope_row = flow.a.tr_mul(&row);
             let cell = flow.cell_rung();
             let width = flow.rung_duration(cell);
-            let mut left = piece.start;
-            look(row.dot(&left), piece.start_s);
-            for k in 0..1usize << CELLS_LOG2 {
-                let at = k as f64 * width;
-                let right = flow.advance(cell, &left);
-                look(row.dot(&right), piece.start_s + at + width);
-                let (before, after) = (slope_row.dot(&left), slope_row.dot(&right));
-                if before * after < 0.0 {
-                    let top = narrow(flow, left, at, cell, &[slope_row * after.signum()]);
-                    look(row.dot(&top.state), piece.start_s + top.at);
+            let mut before = (row.dot(&grid[0]), slope_row.dot(&grid[0]));
+            look(before.0, piece.start_s);
+            for (k, x) in grid.iter().enumerate().skip(1) {
+                let after = (row.dot(x), slope_row.dot(x));
+                let at = (k - 1) as f64 * width;
+                let (least, greatest) = look(after.0, piece.start_s + at + width);
+                if before.1 * after.1 < 0.0 {
+                    // Only where the turning point can lie beyond what is known already.
+                    let reach = width * before.1.abs().max(after.1.abs());
+                    if before.0.max(after.0) + reach > greatest
+                        || before.0.min(after.0) - reach < least
+                    {
+                        let rows = [slope_row * after.1.signum()];
+                        let turn = narrow(flow, grid[k - 1], at, cell, &rows);
+                        look(row.dot(&turn.state), piece.start_s + turn.at);
+                    }
                 }
-                left = right;
+                before = after;
             }
         }
         found

@@ -58,6 +58,8 @@ pub(super) struct Solution<const N: usize> {
     pub(super) jump_energy_j: f64,
     /// Integrals of x x' over each piece, made when first asked for.
     pub(super) moments: OnceCell<Vec<Square<N>>>,
+    /// States at the ends of each piece's cells, made when first asked for.
+    pub(super) grids: OnceCell<Vec<Vec<State<N>>>>,
 }
 
 struct Solver<'a, const N: usize> {
@@ -135,6 +137,7 @@ where
         switching,
         jump_energy_j: lap.jump_energy_j,
         moments: OnceCell::new(),
+        grids: OnceCell::new(),
     })
 }
 
@@ -148,7 +151,7 @@ impl<const N: usize> Solver<'_, N> {
         // Diodes left out: the exact answer where none conducts, a start where some do.
         let mut conducting = 0;
         let first = self.lap(&x, conducting, false)?;
-        x = newton(&x, &first)?;
+        x = newton(&x, &first, &self.masses)?;
         let mut residual = f64::INFINITY;
         for iteration in 1..=MOST_ITERATIONS {
             self.flows.truncate(self.kept.len());
@@ -159,7 +162,7 @@ impl<const N: usize> Solver<'_, N> {
             if residual <= SETTLED && repeats {
                 return Ok((lap, iteration));
             }
-            let next = newton(&x, &lap)?;
+            let next = newton(&x, &lap, &self.masses)?;
             let moved = distance(&x, &next, &lap);
             if residual <= ACCEPTED && (moved <= ACCEPTED || iteration > PATIENCE) && repeats {
                 return Ok((lap, iteration));
@@ -397,20 +400,30 @@ fn rounding<const N: usize>(row: &State<N>, x: &State<N>) -> f64 {
             .fold(0.0, f64::max)
 }
 
-fn newton<const N: usize>(x: &State<N>, lap: &Lap<N>) -> Result<State<N>, OrbitError>
+/// The state that repeats, by the derivative of the period map. Solved in states scaled by
+/// the root of their energy, in which a circuit's matrices are balanced.
+fn newton<const N: usize>(
+    x: &State<N>,
+    lap: &Lap<N>,
+    masses: &State<N>,
+) -> Result<State<N>, OrbitError>
 where
     Const<N>: DimMin<Const<N>, Output = Const<N>>,
 {
-    let mut matrix = Square::<N>::identity() - lap.derivative;
-    let mut residual = lap.end - x;
-    matrix.row_mut(N - 1).fill(0.0);
-    matrix.column_mut(N - 1).fill(0.0);
-    matrix[(N - 1, N - 1)] = 1.0;
-    residual[N - 1] = 0.0;
+    let scale = masses.map(|mass| if mass > 0.0 { 1.0 / mass.sqrt() } else { 1.0 });
+    let mut matrix = Square::<N>::identity();
+    let mut residual = State::<N>::zeros();
+    for row in 0..N - 1 {
+        residual[row] = (lap.end[row] - x[row]) / scale[row];
+        for column in 0..N - 1 {
+            matrix[(row, column)] -= lap.derivative[(row, column)] * scale[column] / scale[row];
+        }
+    }
     let step = matrix
         .lu()
         .solve(&residual)
-        .ok_or(OrbitError::Undetermined)?;
+        .ok_or(OrbitError::Undetermined)?
+        .component_mul(&scale);
     if step.iter().all(|v| v.is_finite()) {
         Ok(x + step)
     } else {

@@ -295,7 +295,7 @@ impl Search<'_> {
     }
 
     fn newton(&self, start: Point, way: Way) -> Result<Point, SizingError> {
-        const PROBE_STEP: f64 = 1e-6;
+        const PROBE_STEP: f64 = 2e-5;
         const LONGEST: f64 = 0.5;
         let mut point = start;
         let no_start = SizingError::NoSolution {
