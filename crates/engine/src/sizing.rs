@@ -9,6 +9,7 @@
 mod ideal;
 mod least_loss;
 mod newton;
+mod path;
 mod problem;
 mod verdict;
 
@@ -53,6 +54,27 @@ pub enum SizingError {
         /// The nearest that exists, one sentence.
         nearest: String,
     },
+    /// The feed coil and duty do not allow soft switching.
+    Feed {
+        /// On-fraction of the switch.
+        duty: f64,
+        /// What was asked and the nearest that was found.
+        nearest: String,
+        /// Whether the feed coil is pinned.
+        pinned: bool,
+    },
+    /// The losses do not allow soft switching.
+    Losses {
+        /// The part of them with which it was still found.
+        fraction: f64,
+    },
+    /// The losses do not allow this power from this supply.
+    Power {
+        /// What was asked, watts.
+        asked: f64,
+        /// The most that was found, watts.
+        most: f64,
+    },
     /// Newton's method found no soft-switching stage.
     NoSolution {
         /// Least that remained of voltage and slope, relative to the supply.
@@ -70,6 +92,10 @@ impl SizingError {
             Self::LoadedQ { .. } => Some("stage.loaded_q"),
             Self::Capacitance { .. } => Some("device.capacitance"),
             Self::Pinned { .. } => Some("fitted"),
+            Self::Feed { pinned: true, .. } => Some("fitted.feed"),
+            Self::Feed { pinned: false, .. } => Some("stage.feed"),
+            Self::Losses { .. } => Some("stage.coil_q"),
+            Self::Power { .. } => Some("brief.power_w"),
             Self::NoSolution { .. } | Self::Stage(_) => None,
         }
     }
@@ -95,9 +121,25 @@ impl fmt::Display for SizingError {
                 highest_hz * 1e-6
             ),
             Self::Pinned { nearest } => f.write_str(nearest),
+            Self::Feed { duty, nearest, .. } => {
+                write!(
+                    f,
+                    "at duty {duty} there is no soft switching with {nearest}"
+                )
+            }
+            Self::Losses { fraction } => write!(
+                f,
+                "the losses leave no soft switching: it was found with {:.0} % of them, so coils of higher Q, a lower on-resistance or a higher supply are needed",
+                100.0 * fraction
+            ),
+            Self::Power { asked, most } => write!(
+                f,
+                "with these losses this supply gives at most about {most:.4} W with soft switching, not {asked:.4} W: a higher supply, a lower on-resistance or coils of higher Q would"
+            ),
             Self::NoSolution { residual } => write!(
                 f,
-                "no soft-switching stage was found: voltage or slope at turn-on stayed at {residual:.2} of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back"
+                "no soft-switching stage was found: voltage or slope at turn-on stayed at {:.2} % of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back",
+                100.0 * residual
             ),
             Self::Stage(error) => error.fmt(f),
         }
@@ -138,7 +180,7 @@ pub fn solve(design: &Design) -> Answer {
 pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>), SizingError> {
     let problem = Problem::of(design)?;
     let mut notes = problem.notes.clone();
-    let mut stage = newton::size(&problem, &mut notes)?;
+    let mut stage = path::size(&problem, &mut notes)?;
     if design.stage.aim == Aim::LeastLoss {
         stage = least_loss::improve(&problem, stage, &mut notes)?;
     }

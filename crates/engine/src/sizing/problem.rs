@@ -35,9 +35,14 @@ pub(super) struct Point {
     pub(super) supply_v: f64,
 }
 
-/// How far the stage is from the ideal one (0) to the wanted one (1).
+/// Where between the ideal stage and the wanted one: losses and feed from 0 (ideal) to 1
+/// (wanted), and the loaded Q.
 #[derive(Debug, Clone, Copy, PartialEq)]
-pub(super) struct Way(pub(super) f64);
+pub(super) struct Way {
+    pub(super) losses: f64,
+    pub(super) feed: f64,
+    pub(super) loaded_q: f64,
+}
 
 fn field(field: &'static str, reason: String) -> SizingError {
     SizingError::Field { field, reason }
@@ -301,25 +306,52 @@ impl Problem {
                 let elastance = 1.0 / (self.omega() * c.c_f * point.load_ohm);
                 (elastance + point.reactance, elastance)
             }
-            (None, None) => {
-                let q = self.start_q() + (self.loaded_q - self.start_q()) * way.0;
-                (q, q - point.reactance)
-            }
+            (None, None) => (way.loaded_q, way.loaded_q - point.reactance),
         }
     }
 
-    /// Loaded Q at the ideal end of the way.
-    fn start_q(&self) -> f64 {
-        self.loaded_q.max(20.0)
+    /// The end of the way.
+    pub(super) fn wanted(&self) -> Way {
+        Way {
+            losses: 1.0,
+            feed: 1.0,
+            loaded_q: self.loaded_q,
+        }
     }
 
-    /// The stage at a point, with feed, loaded Q and losses `way` of the way to the wanted.
+    /// q of a resonant feed on its way to `q`: from that of a choke of 30 R.
+    pub(super) fn feed_q(q: f64, way: Way) -> f64 {
+        let start = q.min(0.43);
+        start + (q - start) * way.feed
+    }
+
+    /// The feed coil at a point, henries.
+    pub(super) fn feed_l(&self, point: &Point, way: Way) -> f64 {
+        let omega = self.omega();
+        let scale = point.load_ohm / omega;
+        let wanted = match (self.pins.feed, self.feed) {
+            (Some(pin), _) => pin.l_h,
+            (None, Feed::Choke { reactance_ratio }) => reactance_ratio * scale,
+            (None, Feed::Resonant { q }) => {
+                let q = Self::feed_q(q, way);
+                return scale / (q * q * point.shunt);
+            }
+            (None, Feed::Inductance { l_h }) => l_h,
+        };
+        if way.feed >= 1.0 {
+            return wanted;
+        }
+        let start = (30.0 * scale).max(wanted);
+        1.0 / ((1.0 - way.feed) / start + way.feed / wanted)
+    }
+
+    /// The stage at a point, at a place on the way to the wanted one.
     pub(super) fn stage(&self, point: &Point, way: Way) -> Stage {
         let omega = self.omega();
         let r = point.load_ohm;
         let (coil_x, capacitor_x) = self.branch(point, way);
         let total_f = point.shunt / (omega * r);
-        let loss = |q: Option<f64>| q.map_or(0.0, |q| way.0 / q);
+        let loss = |q: Option<f64>| q.map_or(0.0, |q| way.losses / q);
         let coil = |l_h: f64, pin: Option<Coil>| Part {
             value: l_h,
             esr_ohm: pin
@@ -334,24 +366,13 @@ impl Problem {
                 0.0
             }),
         };
-        let wanted_feed = match (self.pins.feed, self.feed) {
-            (Some(pin), _) => pin.l_h,
-            (None, Feed::Choke { reactance_ratio }) => reactance_ratio * r / omega,
-            (None, Feed::Resonant { q }) => 1.0 / (q * q * omega * omega * total_f),
-            (None, Feed::Inductance { l_h }) => l_h,
-        };
-        let start_feed = (30.0 * r / omega).max(wanted_feed);
-        let feed_l = if way.0 >= 1.0 {
-            wanted_feed
-        } else {
-            1.0 / ((1.0 - way.0) / start_feed + way.0 / wanted_feed)
-        };
+        let feed_l = self.feed_l(point, way);
         let shunt_f = self.pins.shunt.map_or(total_f - self.device_f, |p| p.c_f);
         Stage {
             carrier_hz: self.carrier_hz,
             duty: self.duty,
             supply_v: point.supply_v,
-            on_resistance_ohm: self.on_resistance_ohm * way.0,
+            on_resistance_ohm: self.on_resistance_ohm * way.losses,
             device_f: if shunt_f > 0.0 {
                 self.device_f
             } else {
