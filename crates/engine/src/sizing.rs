@@ -37,6 +37,8 @@ pub enum SizingError {
         asked: f64,
         /// The least that allows soft switching here.
         least: f64,
+        /// Whether it is solved for, and not only the lowest that was found.
+        exact: bool,
         /// On-fraction of the switch.
         duty: f64,
     },
@@ -105,10 +107,22 @@ impl fmt::Display for SizingError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::Field { reason, .. } => f.write_str(reason),
-            Self::LoadedQ { asked, least, duty } => write!(
-                f,
-                "loaded Q {asked:.4} is below {least:.4}, the least for soft switching at duty {duty} with this feed and these losses"
-            ),
+            Self::LoadedQ {
+                asked,
+                least,
+                exact,
+                duty,
+            } => {
+                let what = if *exact {
+                    "the least for soft switching"
+                } else {
+                    "the lowest that was found to switch softly"
+                };
+                write!(
+                    f,
+                    "loaded Q {asked:.4} is below {least:.4}, {what} at duty {duty} with this feed and these losses"
+                )
+            }
             Self::Capacitance {
                 device_f,
                 needed_f,

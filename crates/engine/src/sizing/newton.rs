@@ -97,11 +97,21 @@ impl Search<'_> {
 
     /// The point that meets every condition, from `start`.
     pub(super) fn newton(&self, start: Point, way: Way) -> Result<Point, Missed> {
+        self.newton_within(start, way, MOST_ITERATIONS)
+    }
+
+    /// The same with a cap on the iterations.
+    pub(super) fn newton_within(
+        &self,
+        start: Point,
+        way: Way,
+        most: usize,
+    ) -> Result<Point, Missed> {
         const PROBE_STEP: f64 = 2e-5;
         const LONGEST: f64 = 0.5;
         let mut point = start;
         let mut here = self.conditions(&point, way).ok_or(Missed(f64::INFINITY))?;
-        for _ in 0..MOST_ITERATIONS {
+        for _ in 0..most {
             let residual = here.amax();
             if residual < MET {
                 return Ok(point);
@@ -125,7 +135,7 @@ impl Search<'_> {
             };
             let mut scale = (LONGEST / step.amax()).min(1.0);
             let mut accepted = None;
-            for _ in 0..14 {
+            for _ in 0..8 {
                 let mut candidate = point;
                 for (&unknown, &length) in self.unknowns.iter().zip(&step) {
                     candidate = self.moved(&candidate, unknown, scale * length);

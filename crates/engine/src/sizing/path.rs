@@ -13,7 +13,9 @@ use crate::stage::Stage;
 
 const MOST_ITERATIONS: usize = 40;
 const MOST_STEPS: usize = 200;
-const LEAST_STEP: f64 = 1.0 / 1024.0;
+const LEAST_STEP: f64 = 1.0 / 256.0;
+/// A step of the right length converges in a few iterations.
+const STEP_ITERATIONS: usize = 9;
 /// A step that moves the point further than this has jumped to another branch.
 const LONGEST_MOVE: f64 = 0.8;
 const LONGEST_FACTOR: f64 = 2.2;
@@ -199,52 +201,59 @@ fn arrive(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
             });
         }
     };
-    to_loaded_q(search, point, q0)
+    match to_loaded_q(search, point, q0) {
+        // A lower loaded Q may only stand in the way of the power.
+        Err(stalled) if search.seeks_power => by_load(search, point, &stalled, q0),
+        other => other.map_err(|stalled| loaded_q_error(search, &stalled)),
+    }
 }
 
 /// The last leg: down to the wanted loaded Q.
-fn to_loaded_q(search: &Search<'_>, point: Point, q0: f64) -> Result<Point, SizingError> {
-    let problem = search.problem;
-    let q1 = problem.loaded_q;
-    let along = |t: f64| Way {
-        loaded_q: if t >= 1.0 {
+fn to_loaded_q(search: &Search<'_>, point: Point, q0: f64) -> Result<Point, Stalled> {
+    let wanted = search.problem.wanted();
+    let q1 = wanted.loaded_q;
+    let along = |t: f64| {
+        let loaded_q = if t >= 1.0 {
             q1
         } else {
             q0 * libm::pow(q1 / q0, t)
-        },
-        ..problem.wanted()
-    };
-    walk(search, point, along).map_err(|stalled| {
-        // At the end of this leg the capacitor is a short: the coil alone tells the least.
-        let unknowns = search
-            .unknowns
-            .iter()
-            .map(|&u| {
-                if u == Unknown::Reactance {
-                    Unknown::LoadedQ
-                } else {
-                    u
-                }
-            })
-            .collect();
-        let least = Search {
-            problem,
-            unknowns,
-            seeks_power: search.seeks_power,
-        }
-        .newton(stalled.point, stalled.way)
-        .map_or(stalled.way.loaded_q, |found| found.reactance);
-        let least = if least > q1 {
-            least
-        } else {
-            stalled.way.loaded_q
         };
-        SizingError::LoadedQ {
-            asked: q1,
-            least,
-            duty: problem.duty,
+        Way { loaded_q, ..wanted }
+    };
+    walk(search, point, along)
+}
+
+/// At the least loaded Q the capacitor is a short and the coil alone makes the reactance:
+/// that stage, solved for, is the least where the leg ended close to it.
+fn loaded_q_error(search: &Search<'_>, stalled: &Stalled) -> SizingError {
+    const CLOSE: f64 = 1.1;
+    let problem = search.problem;
+    let short = |&u: &Unknown| {
+        if u == Unknown::Reactance {
+            Unknown::LoadedQ
+        } else {
+            u
         }
-    })
+    };
+    let unknowns = search.unknowns.iter().map(short).collect();
+    let reached = stalled.way.loaded_q;
+    let least = Search {
+        problem,
+        unknowns,
+        seeks_power: search.seeks_power,
+    }
+    .newton(stalled.point, stalled.way)
+    .ok()
+    .map(|found| found.reactance)
+    .filter(|least| {
+        *least > problem.loaded_q && *least < CLOSE * reached && *least > reached / CLOSE
+    });
+    SizingError::LoadedQ {
+        asked: problem.loaded_q,
+        least: least.unwrap_or(reached),
+        exact: least.is_some(),
+        duty: problem.duty,
+    }
 }
 
 /// Where the losses stand in the way of the power: soft switching at one load after another,
@@ -292,7 +301,8 @@ fn by_load(
         .ok_or(SizingError::Losses {
             fraction: stalled.way.losses,
         })?;
-    point = to_loaded_q(&at_load, point, q0)?;
+    point =
+        to_loaded_q(&at_load, point, q0).map_err(|stalled| loaded_q_error(&at_load, &stalled))?;
     let mut most: f64 = 0.0;
     for _ in 0..MOST_LOADS {
         let got = at_load.power(&point).unwrap_or(0.0);
@@ -347,8 +357,22 @@ fn walk(search: &Search<'_>, start: Point, way: impl Fn(f64) -> Way) -> Result<P
         let next = f64::min(t + step, 1.0);
         let found = before
             .map(|(earlier, old)| extrapolate(&old, &point, (next - t) / (t - earlier)))
-            .and_then(|guess| near(&guess, search.newton(guess, way(next)).ok()?))
-            .or_else(|| near(&point, search.newton(point, way(next)).ok()?));
+            .and_then(|guess| {
+                near(
+                    &guess,
+                    search
+                        .newton_within(guess, way(next), STEP_ITERATIONS)
+                        .ok()?,
+                )
+            })
+            .or_else(|| {
+                near(
+                    &point,
+                    search
+                        .newton_within(point, way(next), STEP_ITERATIONS)
+                        .ok()?,
+                )
+            });
         match found {
             Some(found) if next >= 1.0 => return Ok(found),
             Some(found) => {
