@@ -98,6 +98,7 @@ fn has_target_library() -> bool {
 fn packaged_is_there() -> bool {
     Path::new("/usr/bin/rustc").exists()
         && Path::new("/usr/bin/cargo").exists()
+        && Path::new("/usr/bin/rust-lld").exists()
         && output("/usr/bin/rustc", &["--print", "sysroot"]).is_some_and(|s| {
             Path::new(&s)
                 .join("lib/rustlib/src/rust/library/std")
@@ -123,11 +124,11 @@ pub(crate) fn wasm() -> Result<Wasm, String> {
     if has_target_library() {
         return Ok(Wasm::Target);
     }
-    if packaged_is_there() {
-        return Ok(Wasm::Packaged);
-    }
     if run(Command::new("rustup").args(["target", "add", WASM])).is_ok() && has_target_library() {
         return Ok(Wasm::Target);
+    }
+    if packaged_is_there() {
+        return Ok(Wasm::Packaged);
     }
     if debian(&DEBIAN_WASM) && packaged_is_there() {
         return Ok(Wasm::Packaged);
