@@ -44,9 +44,12 @@ impl Rows {
         }
     }
 
-    /// Solves `matrix` x = rows for every column.
+    /// Solves `matrix` x = rows for every column; nothing where there are no rows.
     pub(super) fn solve(&mut self, matrix: &DMatrix<f64>) -> Option<()> {
         let count = self.len();
+        if count == 0 {
+            return Some(());
+        }
         let right = DMatrix::from_row_slice(count, self.width, &self.data);
         let solved = matrix.clone().lu().solve(&right)?;
         for k in 0..count {
