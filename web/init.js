@@ -10,5 +10,27 @@ import(at(here.dataset.glue))
     document.body.prepend(note);
   });
 if ('serviceWorker' in navigator && location.protocol.startsWith('http')) {
-  navigator.serviceWorker.register(at('sw.js'), { updateViaCache: 'none' }).catch(() => {});
+  const first = !navigator.serviceWorker.controller;
+  const offer = (worker) => {
+    const bar = document.createElement('p');
+    bar.className = 'update';
+    bar.setAttribute('role', 'status');
+    bar.textContent = 'A new version of the page is here. ';
+    const button = document.createElement('button');
+    button.textContent = 'Reload with it';
+    button.addEventListener('click', () => worker.postMessage('take over'));
+    bar.append(button);
+    document.body.prepend(bar);
+  };
+  navigator.serviceWorker.register(at('sw.js'), { updateViaCache: 'none' }).then((registration) => {
+    if (registration.waiting) offer(registration.waiting);
+    registration.addEventListener('updatefound', () => {
+      const worker = registration.installing;
+      worker.addEventListener('statechange', () => {
+        if (worker.state === 'installed' && navigator.serviceWorker.controller) offer(worker);
+      });
+    });
+  }).catch(() => {});
+  // The design stands in the address, so a reload loses nothing.
+  navigator.serviceWorker.addEventListener('controllerchange', () => { if (!first) location.reload(); });
 }

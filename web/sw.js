@@ -6,9 +6,12 @@ const NAME = 'evenfall-page-' + VERSION;
 self.addEventListener('install', (event) => {
   event.waitUntil(
     caches.open(NAME)
-      .then((cache) => cache.addAll(FILES.map((file) => new Request(file, { cache: 'reload' }))))
-      .then(() => self.skipWaiting()),
+      .then((cache) => cache.addAll(FILES.map((file) => new Request(file, { cache: 'reload' })))),
   );
+});
+// A new version waits until the page asks for it: open tabs keep the files they started with.
+self.addEventListener('message', (event) => {
+  if (event.data === 'take over') self.skipWaiting();
 });
 self.addEventListener('activate', (event) => {
   event.waitUntil(

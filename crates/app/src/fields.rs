@@ -19,9 +19,12 @@ pub(crate) fn Field(
     /// Whether it may be left empty.
     #[prop(optional)]
     optional: bool,
-    /// What finds the field in a test.
-    #[prop(optional, into)]
-    test: String,
+    /// A slider from the first to the second value, logarithmic.
+    #[prop(optional)]
+    slider: Option<(f64, f64)>,
+    /// One line on what the quantity is.
+    #[prop(optional)]
+    hint: &'static str,
 ) -> impl IntoView {
     let typed: RwSignal<Option<String>> = RwSignal::new(None);
     let problem: RwSignal<Option<String>> = RwSignal::new(None);
@@ -78,14 +81,22 @@ pub(crate) fn Field(
     };
     let id = format!("field-{name}");
     let error_id = format!("{id}-problem");
-    let test = if test.is_empty() { id.clone() } else { test };
     let described = error_id.clone();
+    let slide = move |event: leptos::ev::Event, range: (f64, f64)| {
+        let at: f64 = event_target_value(&event).parse().unwrap_or(0.0);
+        let text = quantity::format(range.0 * libm::pow(range.1 / range.0, at / 1000.0), unit);
+        if let Ok(number) = quantity::parse(&text, unit) {
+            problem.set(None);
+            typed.set(None);
+            app.design.update(|d| set(d, Some(number)));
+        }
+    };
     view! {
-        <span class="field">
+        <span class="field" title=hint>
             <label for=id.clone()>{label}</label>
             <input
-                id=id
-                data-test=test
+                id=id.clone()
+                data-test=id.clone()
                 type="text"
                 autocomplete="off"
                 spellcheck="false"
@@ -96,6 +107,20 @@ pub(crate) fn Field(
                 on:keydown=key
                 on:blur=blur
             />
+            {slider.map(|range| view! {
+                <input
+                    type="range"
+                    min="0"
+                    max="1000"
+                    aria-label=format!("{label}, slider")
+                    data-test=format!("slide-{name}")
+                    prop:value=move || {
+                        let now = value.get().unwrap_or(range.0).max(1e-300);
+                        (1000.0 * libm::log(now / range.0) / libm::log(range.1 / range.0)).clamp(0.0, 1000.0).to_string()
+                    }
+                    on:input=move |event| slide(event, range)
+                />
+            })}
             <span class="problem" id=error_id role="status">{move || problem.get()}</span>
         </span>
     }

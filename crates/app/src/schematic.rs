@@ -2,6 +2,7 @@
 
 use crate::parts::ELEMENTS;
 use crate::state::App;
+use evenfall_engine::design::Capacitance;
 use evenfall_engine::quantity;
 use leptos::prelude::*;
 
@@ -25,7 +26,7 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
     };
     let state = move |index: usize| {
         let pinned = app.design.with(|d| (ELEMENTS[index].pinned)(d)).is_some();
-        if pinned { "pinned" } else { "sized" }
+        if pinned { "● pinned" } else { "○ sized" }
     };
     let label = move |index: usize, x: i32, y: i32, name: &'static str| {
         view! {
@@ -40,6 +41,12 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
             .map_or_else(String::new, |s| quantity::format(s.values.supply_v, "V"))
     };
     let on = move || quantity::format(app.design.with(|d| d.device.on_resistance_ohm), "Ω");
+    let output_capacitance = move || {
+        app.design.with(|d| match d.device.capacitance {
+            Capacitance::Constant { c_f } => format!("with {}", quantity::format(c_f, "F")),
+            _ => String::new(),
+        })
+    };
     let peak = move || {
         app.last.get().map_or_else(String::new, |s| {
             format!("peak {}", quantity::format(s.figures.drain_peak_v, "V"))
@@ -53,30 +60,40 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
     view! {
         <section class="card">
             <h2>"Stage"</h2>
-            <svg class="schematic" viewBox="0 0 650 270" role="img" aria-label="Class-E stage: supply through the feed coil to the drain; switch and shunt capacitor from drain to ground; series coil, series capacitor and load. Values are in the table of elements.">
+            <svg class="schematic" viewBox="0 0 650 275" role="img" aria-label="Class-E stage: supply through the feed coil to the drain; switch, body diode and shunt capacitor from drain to ground; series coil, series capacitor and load. Values are in the table of elements.">
                 <g class="wire">
-                    <path d="M40 250V150M40 110V50H70M130 50H200V250M200 50H200"/>
-                    <path d=coil(70, 50)/>
-                    <path d="M200 110H470M200 110V50M330 110H330"/>
-                    <path d="M300 110V165M285 165H315M285 173H315M300 173V250" class="c1"/>
-                    <path d=coil(360, 110)/>
-                    <path d="M470 110V100M470 110V120M470 96V124M478 96V124M478 110H550V150"/>
-                    <path d="M540 150H560V200H540ZM550 200V250"/>
-                    <path d="M30 250H560M28 150H52M34 142H46M40 142V110M34 158H46M28 134H52"/>
+                    // Supply and feed coil.
+                    <path d="M40 250V166M28 166H52M34 158H46M28 150H52M34 142H46M40 142V50H80M140 50H200V110"/>
+                    <path d=coil(80, 50)/>
+                    // Switch.
+                    <path d="M200 110V150M200 200L183 157M200 200V250"/>
+                    // Shunt capacitor.
+                    <path d="M320 110V168M305 168H335M305 176H335M320 176V250"/>
+                    // Series branch and load.
+                    <path d="M200 110H370M430 110H480M480 96V124M488 96V124M488 110H560V150M550 150H570V200H550ZM560 200V250"/>
+                    <path d=coil(370, 110)/>
+                    // Ground.
+                    <path d="M40 250H560M190 258H210M194 263H206M198 268H202M200 250V258"/>
                 </g>
-                <g class="gap"><path d="M200 150V200"/><path d="M362 110H418"/></g>
-                <g class="wire"><path d="M200 200L180 158M200 150V152"/><path d=coil(360, 110)/><circle cx="200" cy="110" r="3"/><circle cx="300" cy="110" r="3"/></g>
-                <text x="52" y="190" class="name">"Supply"</text>
-                <text x="52" y="207" class="value">{supply}</text>
-                {label(0, 72, 78, "L1 feed")}
-                <text x="208" y="180" class="name">"Switch"</text>
-                <text x="208" y="197" class="value">{on}</text>
-                {label(1, 322, 166, "C1 shunt")}
-                {label(2, 352, 50, "L2 series")}
-                {label(3, 452, 50, "C2 series")}
-                {label(4, 566, 166, "Load")}
-                <text x="208" y="100" class="volt">{peak}</text>
-                <text x="566" y="228" class="watt">{power}</text>
+                <circle cx="200" cy="110" r="3"/>
+                <circle cx="320" cy="110" r="3"/>
+                <circle cx="200" cy="152" r="2.5"/>
+                <circle cx="200" cy="200" r="2.5"/>
+                <Show when=move || app.design.with(|d| d.device.diode.is_some())>
+                    <g class="wire"><path d="M200 130H228V168M219 168H237M228 168L219 184H237ZM228 184V225H200"/></g>
+                </Show>
+                <text x="56" y="182" class="name">"Supply"</text>
+                <text x="56" y="199" class="value">{supply}</text>
+                {label(0, 82, 78, "L1 feed")}
+                <text x="136" y="206" class="name">"Switch"</text>
+                <text x="136" y="223" class="value">{on}</text>
+                <text x="136" y="238" class="state">{output_capacitance}</text>
+                {label(1, 342, 166, "C1 shunt")}
+                {label(2, 362, 46, "L2 series")}
+                {label(3, 462, 46, "C2 series")}
+                {label(4, 576, 158, "Load")}
+                <text x="208" y="102" class="volt">{peak}</text>
+                <text x="576" y="222" class="watt">{power}</text>
             </svg>
         </section>
     }

@@ -76,6 +76,17 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
         }
         text
     };
+    let axis = move || {
+        let Some(period) = app.last.get().and_then(|s| s.waveforms.t_s.last().copied()) else {
+            return String::new();
+        };
+        let opens = period * app.design.with(|d| d.stage.duty);
+        format!(
+            "Time from 0 to {}: the switch closes at 0 and opens at {} (upright lines).",
+            quantity::format(period * periods.get() as f64, "s"),
+            quantity::format(opens, "s")
+        )
+    };
     let total = move || {
         app.last.with(|s| {
             s.as_ref()
@@ -116,6 +127,7 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             <div class="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
                 {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized/> }).collect_view()}
             </div>
+            <p class="origin">{axis}</p>
             <p class="readout" aria-live="polite" data-test="readout">{readout}</p>
         </section>
     }
@@ -142,6 +154,7 @@ fn TraceView(
             &solved.waveforms,
             periods.get(),
             cursor.get(),
+            app.design.with(|d| d.stage.duty),
         );
     });
     let range = move || {
@@ -174,6 +187,7 @@ fn draw(
     waveforms: &Waveforms,
     periods: usize,
     cursor: Option<usize>,
+    duty: f64,
 ) -> Option<()> {
     let ratio = window().device_pixel_ratio().max(1.0);
     let width = f64::from(canvas.client_width()).max(120.0);
@@ -210,6 +224,15 @@ fn draw(
             ink.stroke_width(ratio as u32),
         ))
         .ok()?;
+    let faint = ink.mix(0.45).stroke_width(ratio as u32);
+    for period in 0..periods {
+        for instant in [period as f64, period as f64 + duty] {
+            let x = instant * count as f64;
+            chart
+                .draw_series(line(vec![(x, least), (x, most)], faint))
+                .ok()?;
+        }
+    }
     let points = (0..=periods * count).map(|k| {
         let within = if k == periods * count {
             count
