@@ -124,7 +124,7 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
                 <button type="button" aria-pressed=move || (periods.get() == 1).to_string() on:click=move |_| periods.set(1)>"one period"</button>
                 <button type="button" aria-pressed=move || (periods.get() == 2).to_string() on:click=move |_| periods.set(2)>"two periods"</button>
             </p>
-            <div class="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
+            <div class="traces" data-test="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
                 {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized/> }).collect_view()}
             </div>
             <p class="origin">{axis}</p>

@@ -222,8 +222,8 @@ impl Browser {
         self.script(&script).as_str().unwrap_or_default().to_owned()
     }
 
-    /// Types into a field as keys would.
-    pub fn type_into(&self, test: &str, text: &str) {
+    /// Sends keys to an element.
+    pub fn send_keys(&self, test: &str, keys: &str) {
         let found = self.command(
             "element",
             &json!({"using": "css selector", "value": format!("[data-test=\"{test}\"]")}),
@@ -232,11 +232,25 @@ impl Browser {
             .as_object()
             .and_then(|o| o.values().next())
             .and_then(Value::as_str)
-            .expect("a field")
+            .expect("an element")
             .to_owned();
-        // Control and a select what stands there, as a person would; E000 lets go of the keys.
-        let text = format!("\u{E009}a\u{E000}{text}");
-        self.command(&format!("element/{id}/value"), &json!({ "text": text }));
+        self.command(&format!("element/{id}/value"), &json!({ "text": keys }));
+    }
+
+    /// Types over what stands in a field, as a person would: control and a select it, E000
+    /// lets go of the keys.
+    pub fn type_into(&self, test: &str, text: &str) {
+        self.send_keys(test, &format!("\u{E009}a\u{E000}{text}"));
+    }
+
+    /// Loads the page anew and waits until the old one is gone.
+    #[track_caller]
+    pub fn reload(&self) {
+        self.script("window.before = true; location.reload()");
+        self.wait(
+            "the reload",
+            "return window.before === undefined && document.readyState === 'complete'",
+        );
     }
 
     /// Presses a button.

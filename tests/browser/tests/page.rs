@@ -1,6 +1,6 @@
 //! The page, used: type a brief, read the answer, pin, share, break the storage, go offline.
 
-use evenfall_browser_tests::{Browser, Site};
+use evenfall_browser_tests::{Browser, Site, dist};
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::exchange::link;
 use evenfall_engine::{quantity, solve};
@@ -107,7 +107,7 @@ fn damaged_storage_and_broken_links_lose_nothing() {
     browser.press("save");
     browser.script("localStorage.setItem('evenfall/1/design/broken', '{\"half')");
     browser.open(&format!("{}#e=1&v=hostile&p=<b>", site.address));
-    browser.script("location.reload()");
+    browser.reload();
     browser.wait("the page", READY);
     let body = browser.script("return document.body.innerText");
     let body = body.as_str().expect("text");
@@ -130,7 +130,73 @@ fn the_page_works_without_a_network_after_the_first_visit() {
         "return !!navigator.serviceWorker.controller",
     );
     site.go_offline();
-    browser.script("location.reload()");
+    browser.reload();
     browser.wait("the page", READY);
     same_digits(&browser, &native(&browser));
+}
+
+#[test]
+fn the_whole_page_is_sent_in_300_kilobytes() {
+    let mut total = 0;
+    for entry in std::fs::read_dir(dist()).expect("dist") {
+        let mut compressed = Vec::new();
+        let bytes = std::fs::read(entry.expect("a file").path()).expect("its content");
+        let settings = brotli::enc::BrotliEncoderParams {
+            quality: 11,
+            ..Default::default()
+        };
+        brotli::BrotliCompress(&mut bytes.as_slice(), &mut compressed, &settings)
+            .expect("compressed");
+        total += compressed.len();
+    }
+    assert!(
+        total > 100_000 && total <= 300_000,
+        "{total} bytes as brotli"
+    );
+}
+
+#[test]
+fn every_starting_design_opens_without_a_fault() {
+    let site = Site::start();
+    let browser = Browser::start("starts");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    let count =
+        browser.script("return document.querySelectorAll('[data-test=start] option').length");
+    let count = count.as_u64().expect("a number");
+    assert_eq!(count, 6);
+    for index in 1..count {
+        browser.script(&format!(
+            "const s = document.querySelector('[data-test=start]'); s.selectedIndex = {index}; s.dispatchEvent(new Event('change', {{bubbles: true}}))"
+        ));
+        let solved = native(&browser);
+        same_digits(&browser, &solved);
+        assert!(
+            !browser.text("summary").starts_with("No such stage"),
+            "design {index}: {}",
+            browser.text("summary")
+        );
+    }
+    assert_eq!(browser.console_errors(), Vec::<String>::new());
+}
+
+#[test]
+fn the_keyboard_steps_values_and_reads_the_scope() {
+    let site = Site::start();
+    let browser = Browser::start("keys");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.send_keys("field-supply", "\u{E013}");
+    assert_eq!(
+        browser.script("return document.querySelector('[data-test=field-supply]').value"),
+        "48.48 V"
+    );
+    browser.send_keys("traces", "\u{E014}\u{E014}");
+    assert!(
+        browser.text("readout").starts_with("at 576"),
+        "{}",
+        browser.text("readout")
+    );
+    let wide = browser.script("return document.documentElement.scrollWidth <= window.innerWidth");
+    assert_eq!(wide, true);
 }
