@@ -41,11 +41,11 @@ fn solves(c: &mut Criterion) {
     c.bench_function("equations of one mode", |b| {
         b.iter(|| evenfall_engine::dynamics::mode(black_box(&circuit), black_box(1)));
     });
-    c.bench_function("steady state of four states, every figure", |b| {
-        b.iter(|| black_box(&plain).solve())
+    c.bench_function("steady state of four states, ten harmonics", |b| {
+        b.iter(|| black_box(&plain).solve_to_harmonic(10))
     });
     c.bench_function("the same with diode intervals", |b| {
-        b.iter(|| black_box(&diode).solve())
+        b.iter(|| black_box(&diode).solve_to_harmonic(10))
     });
     c.bench_function("what sizing asks of a stage", |b| {
         b.iter(|| black_box(&plain).turn_on())

@@ -250,7 +250,17 @@ impl Stage {
     /// # Errors
     /// Where there is no periodic state, or it fails its own power balance.
     pub fn solve(&self) -> Result<Reading, StageError> {
-        self.solve_with(|_, _| ()).map(|(reading, ())| reading)
+        self.solve_with(HARMONICS, |_, _| ())
+            .map(|(reading, ())| reading)
+    }
+
+    /// The same with fewer or more harmonics.
+    ///
+    /// # Errors
+    /// As [`Self::solve`].
+    pub fn solve_to_harmonic(&self, highest: usize) -> Result<Reading, StageError> {
+        self.solve_with(highest.max(1), |_, _| ())
+            .map(|(reading, ())| reading)
     }
 
     /// The same with the curves over one period.
@@ -258,16 +268,17 @@ impl Stage {
     /// # Errors
     /// As [`Self::solve`].
     pub fn solve_with_waveforms(&self) -> Result<(Reading, Waveforms), StageError> {
-        self.solve_with(waveforms)
+        self.solve_with(HARMONICS, waveforms)
     }
 
     fn solve_with<T>(
         &self,
+        highest: usize,
         more: fn(&Layout, &dyn Orbit) -> T,
     ) -> Result<(Reading, T), StageError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
-        let reading = read(self, &layout, orbit.as_ref());
+        let reading = read(self, &layout, orbit.as_ref(), highest);
         if reading.balance.abs() <= BALANCE_BOUND {
             Ok((reading, more(&layout, orbit.as_ref())))
         } else {
@@ -320,13 +331,13 @@ pub struct Reading {
     pub harmonics_dbc: Vec<f64>,
     /// Unaccounted part of the supply power, relative.
     pub balance: f64,
-    /// Drain voltage's harmonics 0..=20, volts.
+    /// Drain voltage's harmonics from 0 on, volts.
     pub drain_harmonics_v: Vec<f64>,
-    /// Load current's harmonics 0..=20, amperes.
+    /// Load current's harmonics from 0 on, amperes.
     pub load_harmonics_a: Vec<f64>,
 }
 
-fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
+fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Reading {
     let drain = Probe::Voltage(layout.switch);
     let square = |probe| orbit.mean_product(probe, probe);
     let ohmic = |branch: usize, ohm: f64| ohm * square(Probe::Current(branch));
@@ -336,7 +347,7 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit) -> Reading {
     let supply_power_w = stage.supply_v * supply_current_a;
     let total_output_power_w = ohmic(layout.load, stage.load.r_ohm);
     let [load_harmonics_a, drain_harmonics_v] =
-        amplitudes(orbit, [Probe::Current(layout.load), drain]);
+        amplitudes(orbit, [Probe::Current(layout.load), drain], highest);
     let carrier_a = load_harmonics_a[1];
     let output_power_w = 0.5 * carrier_a * carrier_a * stage.load.r_ohm;
     let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(drain);
@@ -421,9 +432,13 @@ impl Discharge {
     }
 }
 
-/// Peak of each sinusoid, orders 0 (the mean) to [`HARMONICS`].
-fn amplitudes<const M: usize>(orbit: &dyn Orbit, probes: [Probe; M]) -> [Vec<f64>; M] {
-    let mut harmonics = orbit.harmonics(&probes, HARMONICS).into_iter();
+/// Peak of each sinusoid, orders 0 (the mean) to `highest`.
+fn amplitudes<const M: usize>(
+    orbit: &dyn Orbit,
+    probes: [Probe; M],
+    highest: usize,
+) -> [Vec<f64>; M] {
+    let mut harmonics = orbit.harmonics(&probes, highest).into_iter();
     probes.map(|_| {
         let coefficients = harmonics.next().unwrap_or_default();
         let size = |(order, c): (usize, Complex64)| {

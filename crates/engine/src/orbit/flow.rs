@@ -65,11 +65,13 @@ impl<const N: usize> Flow<N> {
     }
 
     /// Duration of a rung.
+    #[inline]
     pub(super) fn rung_duration(&self, rung: usize) -> f64 {
-        self.step * libm::exp2(rung as f64)
+        self.step * 2f64.powi(rung as i32)
     }
 
     /// The state one rung later.
+    #[inline]
     pub(super) fn advance(&self, rung: usize, x: &State<N>) -> State<N> {
         x + self.ladder[rung] * x
     }

@@ -30,11 +30,9 @@ fn cis(angle: f64) -> Complex64 {
 }
 
 /// The integral of x x' over a stretch.
-fn moment<const N: usize>(flow: &Flow<N>, x: &State<N>) -> Square<N> {
-    let terms = flow.series(x);
+fn moment<const N: usize>(flow: &Flow<N>, nodes: &[State<N>; 8]) -> Square<N> {
     let mut w = Square::<N>::zeros();
-    for (node, weight) in GAUSS {
-        let at = series_at(&terms, node);
+    for (at, (_, weight)) in nodes.iter().zip(GAUSS) {
         w += at * at.transpose() * (weight * flow.step);
     }
     for e in &flow.ladder[..flow.ladder.len() - 1] {
@@ -47,14 +45,13 @@ fn moment<const N: usize>(flow: &Flow<N>, x: &State<N>) -> Square<N> {
 /// The integrals of x e^(-jkwt) over a stretch, t from its start.
 fn fourier<const N: usize>(
     flow: &Flow<N>,
-    x: &State<N>,
+    nodes: &[State<N>; 8],
     omega: f64,
     count: usize,
 ) -> Vec<(State<N>, State<N>)> {
-    let terms = flow.series(x);
     let mut sums = vec![(State::<N>::zeros(), State::<N>::zeros()); count + 1];
-    for (node, weight) in GAUSS {
-        let at = series_at(&terms, node) * (weight * flow.step);
+    for (at, (node, weight)) in nodes.iter().zip(GAUSS) {
+        let at = at * (weight * flow.step);
         let turn = cis(-omega * node * flow.step);
         let mut phase = Complex64::new(1.0, 0.0);
         for (re, im) in &mut sums {
@@ -101,11 +98,23 @@ impl<const N: usize> Solution<N> {
         })
     }
 
+    /// The states at the nodes of quadrature on each piece's first rung.
+    fn nodes(&self) -> &[[State<N>; 8]] {
+        self.nodes.get_or_init(|| {
+            let states = |piece: &Piece<N>| {
+                let terms = self.flows[piece.flow].series(&piece.start);
+                GAUSS.map(|(node, _)| series_at(&terms, node))
+            };
+            self.pieces.iter().map(states).collect()
+        })
+    }
+
     fn moments(&self) -> &[Square<N>] {
         self.moments.get_or_init(|| {
             self.pieces
                 .iter()
-                .map(|p| moment(&self.flows[p.flow], &p.start))
+                .zip(self.nodes())
+                .map(|(p, nodes)| moment(&self.flows[p.flow], nodes))
                 .collect()
         })
     }
@@ -192,8 +201,8 @@ impl<const N: usize> Orbit for Solution<N> {
     fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>> {
         let omega = TAU / self.period_s;
         let mut sums = vec![vec![Complex64::new(0.0, 0.0); count + 1]; probes.len()];
-        for piece in &self.pieces {
-            let parts = fourier(&self.flows[piece.flow], &piece.start, omega, count);
+        for (piece, nodes) in self.pieces.iter().zip(self.nodes()) {
+            let parts = fourier(&self.flows[piece.flow], nodes, omega, count);
             let turn = cis(-omega * piece.start_s);
             for (sums, &probe) in sums.iter_mut().zip(probes) {
                 let row = self.row(piece, probe);

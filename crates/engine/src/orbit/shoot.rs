@@ -58,6 +58,8 @@ pub(super) struct Solution<const N: usize> {
     pub(super) jump_energy_j: f64,
     /// Integrals of x x' over each piece, made when first asked for.
     pub(super) moments: OnceCell<Vec<Square<N>>>,
+    /// States at the nodes of quadrature, made when first asked for.
+    pub(super) nodes: OnceCell<Vec<[State<N>; 8]>>,
     /// States at the ends of each piece's cells, made when first asked for.
     pub(super) grids: OnceCell<Vec<Vec<State<N>>>>,
 }
@@ -137,6 +139,7 @@ where
         switching,
         jump_energy_j: lap.jump_energy_j,
         moments: OnceCell::new(),
+        nodes: OnceCell::new(),
         grids: OnceCell::new(),
     })
 }

@@ -6,9 +6,9 @@ use nalgebra::{DMatrix, DVector};
 
 /// Conditions count as met when they are below this, relative to the supply.
 const MET: f64 = 1e-10;
-/// What is left where a very high Q and a very stiff choke amplify rounding: a ten-millionth
+/// What is left where a very high Q and a very stiff choke amplify rounding: a millionth
 /// of the supply is far below anything that can be measured.
-const ROUNDING: f64 = 1e-7;
+const ROUNDING: f64 = 1e-6;
 const MOST_ITERATIONS: usize = 40;
 /// Least 1/(w C2 R): below it the series capacitor has become a blocking capacitor.
 const LEAST_ELASTANCE: f64 = 1e-7;
