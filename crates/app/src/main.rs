@@ -8,6 +8,7 @@ mod brief;
 mod examples;
 mod fields;
 mod figures;
+mod fine;
 mod parts;
 mod schematic;
 mod scope;

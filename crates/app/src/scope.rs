@@ -1,13 +1,13 @@
 //! The waveforms on one time axis, with a readout under the pointer and from the keyboard.
 
 use crate::figures::tidy;
+use crate::fine::{FINER, Fine};
 use crate::state::App;
 use evenfall_engine::answer::Waveforms;
 use evenfall_engine::quantity;
 use leptos::html::Canvas;
 use leptos::prelude::*;
 use plotters::prelude::*;
-use plotters_canvas::CanvasBackend;
 use wasm_bindgen::JsCast;
 
 const HEIGHT: f64 = 132.0;
@@ -193,6 +193,7 @@ fn draw(
     let width = f64::from(canvas.client_width()).max(120.0);
     canvas.set_width((width * ratio) as u32);
     canvas.set_height((HEIGHT * ratio) as u32);
+    let fine = ratio * FINER;
     let dark = window()
         .match_media("(prefers-color-scheme: dark)")
         .ok()
@@ -211,20 +212,20 @@ fn draw(
     let least = values.iter().copied().fold(0.0, f64::min);
     let most = values.iter().copied().fold(0.0, f64::max);
     let span = (most - least).max(1e-12);
-    let area = CanvasBackend::with_canvas_object(canvas.clone())?.into_drawing_area();
+    let area = Fine::on(canvas)?.into_drawing_area();
     let end = (periods * count) as f64;
     let mut chart = ChartBuilder::on(&area)
-        .margin((4.0 * ratio) as i32)
+        .margin((4.0 * fine) as i32)
         .build_cartesian_2d(0.0..end, (least - 0.06 * span)..(most + 0.06 * span))
         .ok()?;
     let line = |points: Vec<(f64, f64)>, style: ShapeStyle| LineSeries::new(points, style);
     chart
         .draw_series(line(
             vec![(0.0, 0.0), (end, 0.0)],
-            ink.stroke_width(ratio as u32),
+            ink.stroke_width(fine as u32),
         ))
         .ok()?;
-    let faint = ink.mix(0.45).stroke_width(ratio as u32);
+    let faint = ink.mix(0.45).stroke_width(fine as u32);
     for period in 0..periods {
         for instant in [period as f64, period as f64 + duty] {
             let x = instant * count as f64;
@@ -244,7 +245,7 @@ fn draw(
     chart
         .draw_series(line(
             points.collect(),
-            colour.stroke_width((1.8 * ratio) as u32),
+            colour.stroke_width((1.8 * fine) as u32),
         ))
         .ok()?;
     if let Some(k) = cursor {
@@ -252,14 +253,10 @@ fn draw(
         chart
             .draw_series(line(
                 vec![(x, least), (x, most)],
-                ink.stroke_width(ratio as u32),
+                ink.stroke_width(fine as u32),
             ))
             .ok()?;
-        let dot = Circle::new(
-            (x, values[k % count]),
-            (3.5 * ratio) as i32,
-            colour.filled(),
-        );
+        let dot = Circle::new((x, values[k % count]), (3.5 * fine) as i32, colour.filled());
         chart.draw_series(std::iter::once(dot)).ok()?;
     }
     area.present().ok()
