@@ -49,7 +49,7 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
             .into_iter()
             .map(|v| {
                 let margin = match v.limit.as_str() {
-                    "efficiency" => format!("{:+.1} points", 100.0 * (v.value - v.bound)),
+                    "efficiency" => format!("{:+.1} pt", 100.0 * (v.value - v.bound)),
                     "harmonics" => format!("{:+.1} dB", v.bound - v.value),
                     "output power" => format!("{:+.1} %", 100.0 * (v.value / v.bound - 1.0)),
                     _ => format!("{:+.1} %", 100.0 * (1.0 - v.value / v.bound)),
@@ -59,11 +59,11 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
                 let test = format!("verdict-{}", v.limit.replace(' ', "_"));
                 view! {
                     <tr class:unmet=!v.met data-test=test>
-                        <th scope="row">{v.limit.clone()}</th>
+                        <th scope="row"><span aria-hidden="true">{if v.met { "✓ " } else { "✗ " }}</span>{v.limit.clone()}</th>
                         <td class="number">{show(tidy(v.value, v.bound.abs()))}</td>
                         <td class="number">{show(v.bound)}</td>
                         <td class="number">{margin}</td>
-                        <td>{if v.met { "✓ met" } else { "✗ not met" }}</td>
+                        <td class="met-word">{if v.met { "met" } else { "not met" }}</td>
                     </tr>
                     {v.help.clone().map(|help| view! { <tr class="help"><td colspan="5">{help}</td></tr> })}
                 }
@@ -75,7 +75,7 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
             <h2>"Verdict"</h2>
             <p class="summary" class:good=good class:bad=move || !good() aria-live="polite" data-test="summary">{summary}</p>
             <div class="scroll"><table class="ledger">
-                <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col">"Met"</th></tr></thead>
+                <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col" class="met-word">"Met"</th></tr></thead>
                 <tbody>{rows}</tbody>
             </table></div>
             <ul class="plain">

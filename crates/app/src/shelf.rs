@@ -165,7 +165,7 @@ pub(crate) fn Shelf(app: App) -> impl IntoView {
             <p class="buttons">
                 <button type="button" data-test="save" on:click=save>"Save in this browser"</button>
                 <Show when=move || removed.get().is_some()>
-                    <button type="button" on:click=undo>"Undo delete"</button>
+                    <button type="button" data-test="undo" on:click=undo>"Undo delete"</button>
                 </Show>
             </p>
             <p role="status" class="readout" data-test="shelf-message">{move || message.get()}</p>

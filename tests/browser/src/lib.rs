@@ -101,6 +101,18 @@ pub struct Browser {
 impl Browser {
     /// Starts ChromeDriver and a headless Chromium.
     pub fn start(name: &str) -> Self {
+        Self::start_with(name, &json!({}))
+    }
+
+    /// The same in a browser that lets no page store anything.
+    pub fn start_without_storage(name: &str) -> Self {
+        Self::start_with(
+            name,
+            &json!({"profile.default_content_setting_values.cookies": 2}),
+        )
+    }
+
+    fn start_with(name: &str, settings: &Value) -> Self {
         let profile = std::env::temp_dir().join(format!("evenfall-{}-{name}", std::process::id()));
         let mut driver = Command::new("/usr/bin/chromedriver")
             .arg("--port=0")
@@ -143,7 +155,7 @@ impl Browser {
             "POST",
             "/session",
             &json!({"capabilities": {"alwaysMatch": {
-                "goog:chromeOptions": {"args": arguments},
+                "goog:chromeOptions": {"args": arguments, "prefs": settings},
                 "goog:loggingPrefs": {"browser": "ALL"}
             }}}),
         );

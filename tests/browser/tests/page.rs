@@ -200,3 +200,43 @@ fn the_keyboard_steps_values_and_reads_the_scope() {
     let wide = browser.script("return document.documentElement.scrollWidth <= window.innerWidth");
     assert_eq!(wide, true);
 }
+
+#[test]
+fn blocked_storage_is_said_and_stops_nothing() {
+    let site = Site::start();
+    let browser = Browser::start_without_storage("blocked");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    let body = browser.script("return document.body.innerText");
+    assert!(
+        body.as_str().is_some_and(|t| t.contains("blocks storage")),
+        "{body}"
+    );
+    browser.type_into("field-supply", "40");
+    same_digits(&browser, &native(&browser));
+    browser.press("save");
+    browser.wait(
+        "the message",
+        "return document.querySelector('[data-test=shelf-message]').textContent.includes('link')",
+    );
+}
+
+#[test]
+fn a_deleted_design_comes_back() {
+    let site = Site::start();
+    let browser = Browser::start("undo");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.type_into("field-name", "to be kept");
+    browser.press("save");
+    let stored = "return localStorage.getItem('evenfall/1/design/to be kept') !== null";
+    browser.wait("the entry", stored);
+    browser.script("[...document.querySelectorAll('.shelf button')].find(b => b.textContent === 'delete').click()");
+    assert_eq!(browser.script(stored), false);
+    browser.wait(
+        "undo",
+        "return !!document.querySelector('[data-test=undo]')",
+    );
+    browser.press("undo");
+    browser.wait("the entry again", stored);
+}
