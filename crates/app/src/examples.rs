@@ -21,6 +21,7 @@ fn generator() -> Design {
     d.name = "bench generator".into();
     d.brief.limits = Limits {
         efficiency: Some(0.85),
+        junction_c: Some(125.0),
         harmonic_dbc: Some(-20.0),
         ..Limits::default()
     };
@@ -33,6 +34,10 @@ fn generator() -> Design {
         }),
         rating_v: Some(220.0),
         rating_a: Some(15.0),
+        on_resistance_per_k: Some(0.007),
+        junction_to_ambient_k_per_w: Some(20.0),
+        gate_charge_c: Some(12e-9),
+        gate_drive_v: Some(10.0),
         ..Device::default()
     };
     d.stage = StageChoice {

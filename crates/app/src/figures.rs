@@ -49,9 +49,10 @@ pub(crate) fn Ledger(app: App) -> impl IntoView {
             .into_iter()
             .map(|v| {
                 let margin = match v.limit.as_str() {
+                    "junction temperature" => format!("{:+.1} K", v.bound - v.value),
                     "efficiency" => format!("{:+.1} pt", 100.0 * (v.value - v.bound)),
                     "harmonics" => format!("{:+.1} dB", v.bound - v.value),
-                    "output power" => format!("{:+.1} %", 100.0 * (v.value / v.bound - 1.0)),
+                    "output power" => format!("{:+.1} %", 100.0 * tidy(v.value / v.bound - 1.0, 1.0)),
                     _ => format!("{:+.1} %", 100.0 * (1.0 - v.value / v.bound)),
                 };
                 // Rounding of the solver is shown as zero.
@@ -93,7 +94,7 @@ pub(crate) fn Figures(app: App) -> impl IntoView {
             return Vec::new();
         };
         let f = s.figures;
-        vec![
+        let mut list = vec![
             (
                 "output_power_w",
                 "Output power at the carrier",
@@ -167,7 +168,33 @@ pub(crate) fn Figures(app: App) -> impl IntoView {
                 format!("{:.0e}", s.balance.abs()),
                 "The solve's own check, relative; above 1e-9 it is refused.",
             ),
-        ]
+        ];
+        let optional = [
+            (
+                "junction_c",
+                "Junction temperature",
+                f.junction_c.map(|t| quantity::format(t, "°C")),
+                "A hot package burns the finger too.",
+            ),
+            (
+                "gate_drive_w",
+                "Gate drive power",
+                f.gate_drive_w.map(|w| quantity::format(w, "W")),
+                "",
+            ),
+            (
+                "power_added_efficiency",
+                "Power-added efficiency",
+                f.power_added_efficiency.map(per_cent),
+                "",
+            ),
+        ];
+        list.extend(
+            optional
+                .into_iter()
+                .filter_map(|(key, label, value, caution)| Some((key, label, value?, caution))),
+        );
+        list
     };
     view! {
         <section class="card">

@@ -50,8 +50,8 @@ fn solves(c: &mut Criterion) {
     c.bench_function("what sizing asks of a stage", |b| {
         b.iter(|| black_box(&plain).turn_on())
     });
-    c.bench_function("figures and waveforms", |b| {
-        b.iter(|| black_box(&plain).solve_with_waveforms())
+    c.bench_function("waveforms of four curves", |b| {
+        b.iter(|| black_box(&plain).waveforms())
     });
     let design = link::base();
     c.bench_function("a full sizing", |b| {

@@ -104,6 +104,15 @@ pub struct Figures {
     pub loaded_q: f64,
     /// Fraction of the period in which the body diode conducts.
     pub diode_fraction: f64,
+    /// Junction temperature, degrees Celsius, where the thermal resistance is given.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub junction_c: Option<f64>,
+    /// Gate drive power, watts, where gate charge and drive voltage are given.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub gate_drive_w: Option<f64>,
+    /// Carrier power less drive power over supply power.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub power_added_efficiency: Option<f64>,
 }
 
 /// Where each watt goes.

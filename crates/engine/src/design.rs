@@ -50,6 +50,17 @@ pub struct Brief {
     /// Bounds for the verdicts.
     #[serde(default)]
     pub limits: Limits,
+    /// Temperature around the device, degrees Celsius. Default: 25.
+    #[serde(default = "room", skip_serializing_if = "is_room")]
+    pub ambient_c: f64,
+}
+
+fn room() -> f64 {
+    25.0
+}
+
+fn is_room(celsius: &f64) -> bool {
+    *celsius == room()
 }
 
 /// A load at the carrier: a resistance in series with a reactance.

@@ -77,7 +77,7 @@ fn prefix_power(c: char) -> Option<i32> {
 }
 
 fn is_unit(found: &str, wanted: &str) -> bool {
-    let plain = |s: &str| match s.to_lowercase().as_str() {
+    let plain = |s: &str| match s.to_lowercase().trim_start_matches('°') {
         "ω" | "ohms" | "r" | "ohm" => "ohm".to_owned(),
         other => other.to_owned(),
     };
@@ -274,6 +274,9 @@ mod tests {
             ("1u", "H", 1e-6),
             ("1 µH", "H", 1e-6),
             ("5m", "m", 5.0),
+            ("125 C", "°C", 125.0),
+            ("3 K/W", "K/W", 3.0),
+            ("12nC", "C", 12e-9),
         ] {
             assert_eq!(parse(text, unit), Ok(want), "{text} in {unit}");
         }

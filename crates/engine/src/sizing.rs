@@ -11,6 +11,7 @@ mod least_loss;
 mod newton;
 mod path;
 mod problem;
+mod thermal;
 mod verdict;
 
 pub use ideal::{Ideal, ideal};
@@ -77,6 +78,13 @@ pub enum SizingError {
         /// The most that was found, watts.
         most: f64,
     },
+    /// The device heats up without end.
+    Runaway {
+        /// Ambient temperature, degrees Celsius.
+        ambient_c: f64,
+        /// Junction temperature up to which no balance was found, degrees Celsius.
+        reached_c: f64,
+    },
     /// Newton's method found no soft-switching stage.
     NoSolution {
         /// Least that remained of voltage and slope, relative to the supply.
@@ -98,6 +106,7 @@ impl SizingError {
             Self::Feed { pinned: false, .. } => Some("stage.feed"),
             Self::Losses { .. } => Some("stage.coil_q"),
             Self::Power { .. } => Some("brief.power_w"),
+            Self::Runaway { .. } => Some("device.junction_to_ambient_k_per_w"),
             Self::NoSolution { .. } | Self::Stage(_) => None,
         }
     }
@@ -150,6 +159,13 @@ impl fmt::Display for SizingError {
                 f,
                 "with these losses this supply gives at most about {most:.4} W with soft switching, not {asked:.4} W: a higher supply, a lower on-resistance or coils of higher Q would"
             ),
+            Self::Runaway {
+                ambient_c,
+                reached_c,
+            } => write!(
+                f,
+                "thermal runaway: from {ambient_c} °C around it the junction passes {reached_c:.0} °C and finds no balance; a better heatsink, a lower on-resistance or less power is needed"
+            ),
             Self::NoSolution { residual } => write!(
                 f,
                 "no soft-switching stage was found: voltage or slope at turn-on stayed at {:.2} % of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back",
@@ -187,17 +203,48 @@ pub fn solve(design: &Design) -> Answer {
     }
 }
 
+/// Gate drive power: charge times voltage times frequency (common practice), where both are given.
+fn drive(design: &Design) -> Result<Option<f64>, SizingError> {
+    let device = &design.device;
+    let (Some(charge), Some(volt)) = (device.gate_charge_c, device.gate_drive_v) else {
+        return Ok(None);
+    };
+    let power = charge * volt * design.brief.carrier_hz;
+    if power.is_finite() && charge >= 0.0 && volt >= 0.0 {
+        Ok(Some(power))
+    } else {
+        Err(SizingError::Field {
+            field: "device.gate_charge_c",
+            reason: format!(
+                "gate charge {charge} C and drive {volt} V must be zero or more and finite"
+            ),
+        })
+    }
+}
+
 /// The stage of a design, its reading, and what the person should know about it.
 ///
 /// # Errors
 /// See [`SizingError`].
 pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>), SizingError> {
     let problem = Problem::of(design)?;
-    let mut notes = problem.notes.clone();
-    let mut stage = path::size(&problem, &mut notes)?;
-    if design.stage.aim == Aim::LeastLoss {
-        stage = least_loss::improve(&problem, stage, &mut notes)?;
-    }
-    let (reading, waveforms) = stage.solve_with_waveforms().map_err(SizingError::Stage)?;
+    let trial = |problem: &Problem| {
+        let mut notes = problem.notes.clone();
+        let mut stage = path::size(problem, &mut notes)?;
+        if design.stage.aim == Aim::LeastLoss {
+            stage = least_loss::improve(problem, stage, &mut notes)?;
+        }
+        let reading = stage.solve().map_err(SizingError::Stage)?;
+        Ok((stage, reading, notes))
+    };
+    let ((stage, mut reading, notes), junction_c) =
+        thermal::settle(&problem, trial, |(_, r, _)| r.losses)?;
+    let waveforms = stage.waveforms().map_err(SizingError::Stage)?;
+    let figures = &mut reading.figures;
+    figures.junction_c = junction_c;
+    figures.gate_drive_w = drive(design)?;
+    figures.power_added_efficiency = figures
+        .gate_drive_w
+        .map(|drive| (figures.output_power_w - drive) / figures.supply_power_w);
     Ok((stage, reading, waveforms, notes))
 }

@@ -250,8 +250,7 @@ impl Stage {
     /// # Errors
     /// Where there is no periodic state, or it fails its own power balance.
     pub fn solve(&self) -> Result<Reading, StageError> {
-        self.solve_with(HARMONICS, |_, _| ())
-            .map(|(reading, ())| reading)
+        self.solve_to_harmonic(HARMONICS)
     }
 
     /// The same with fewer or more harmonics.
@@ -259,33 +258,26 @@ impl Stage {
     /// # Errors
     /// As [`Self::solve`].
     pub fn solve_to_harmonic(&self, highest: usize) -> Result<Reading, StageError> {
-        self.solve_with(highest.max(1), |_, _| ())
-            .map(|(reading, ())| reading)
-    }
-
-    /// The same with the curves over one period.
-    ///
-    /// # Errors
-    /// As [`Self::solve`].
-    pub fn solve_with_waveforms(&self) -> Result<(Reading, Waveforms), StageError> {
-        self.solve_with(HARMONICS, waveforms)
-    }
-
-    fn solve_with<T>(
-        &self,
-        highest: usize,
-        more: fn(&Layout, &dyn Orbit) -> T,
-    ) -> Result<(Reading, T), StageError> {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
-        let reading = read(self, &layout, orbit.as_ref(), highest);
+        let reading = read(self, &layout, orbit.as_ref(), highest.max(1));
         if reading.balance.abs() <= BALANCE_BOUND {
-            Ok((reading, more(&layout, orbit.as_ref())))
+            Ok(reading)
         } else {
             Err(StageError::Balance {
                 balance: reading.balance,
             })
         }
+    }
+
+    /// The curves over one period.
+    ///
+    /// # Errors
+    /// As [`Self::solve`].
+    pub fn waveforms(&self) -> Result<Waveforms, StageError> {
+        let layout = self.layout();
+        let orbit = self.solve_layout(&layout)?;
+        Ok(waveforms(&layout, orbit.as_ref()))
     }
 
     /// The elements as the result object states them.
@@ -381,6 +373,9 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Re
         turn_on_slope_v_per_s,
         loaded_q: omega * stage.series_coil.value / stage.load.r_ohm,
         diode_fraction: layout.diode.map_or(0.0, |b| orbit.conducting_fraction(b)),
+        junction_c: None,
+        gate_drive_w: None,
+        power_added_efficiency: None,
     };
     Reading {
         balance: (supply_power_w - total_output_power_w - losses.total_w()) / supply_power_w,

@@ -93,6 +93,7 @@ fn design(n: impl Strategy<Value = f64> + 'static) -> impl Strategy<Value = Desi
         load,
         limits,
         prop::option::of([n.clone(), n.clone()]),
+        n.clone(),
     );
     let device = (
         n.clone(),
@@ -133,6 +134,7 @@ fn design(n: impl Strategy<Value = f64> + 'static) -> impl Strategy<Value = Desi
             load: b.3,
             limits: b.4,
             band_hz: b.5,
+            ambient_c: b.6,
         },
         device: Device {
             on_resistance_ohm: d.0,

@@ -28,6 +28,7 @@ fn unit_design(duty: f64, loaded_q: f64, feed: Feed) -> Design {
                 x_ohm: 0.0,
             },
             limits: Limits::default(),
+            ambient_c: 25.0,
         },
         device: Device::default(),
         stage: StageChoice {

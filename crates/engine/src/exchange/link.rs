@@ -59,6 +59,7 @@ pub fn base() -> Design {
             supply_v: Some(48.0),
             load: Load::default(),
             limits: Limits::default(),
+            ambient_c: 25.0,
         },
         device: Device::default(),
         stage: StageChoice::default(),

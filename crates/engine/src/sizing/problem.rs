@@ -1,6 +1,7 @@
 //! What is given and what is to be found: a design in the form that the solver takes.
 
 use super::SizingError;
+use super::thermal::Thermal;
 use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load};
 use crate::stage::{Part, Stage};
 use std::f64::consts::TAU;
@@ -21,6 +22,8 @@ pub(super) struct Problem {
     pub(super) device_f: f64,
     pub(super) diode: Option<Diode>,
     pub(super) drain_limit_v: Option<f64>,
+    /// How the device heats up; none where its thermal resistance is not given.
+    pub(super) thermal: Option<Thermal>,
     pub(super) pins: crate::design::Fitted,
     pub(super) notes: Vec<String>,
 }
@@ -139,9 +142,38 @@ impl Problem {
                     .into(),
             );
         }
-        if device.on_resistance_per_k.is_some_and(|t| t != 0.0) {
-            notes.push("The rise of on-resistance with temperature is not counted yet.".into());
-        }
+        let thermal = match device.junction_to_ambient_k_per_w {
+            None => {
+                if device.on_resistance_per_k.is_some_and(|t| t != 0.0) {
+                    notes.push(
+                        "Without a thermal resistance the on-resistance is taken as at 25 °C."
+                            .into(),
+                    );
+                }
+                None
+            }
+            Some(k_per_w) => Some(Thermal {
+                ambient_c: in_range(
+                    "brief.ambient_c",
+                    "the ambient temperature",
+                    brief.ambient_c,
+                    -273.0,
+                    400.0,
+                )?,
+                k_per_w: not_negative(
+                    "device.junction_to_ambient_k_per_w",
+                    "the thermal resistance",
+                    k_per_w,
+                )?,
+                per_k: in_range(
+                    "device.on_resistance_per_k",
+                    "the rise of on-resistance per kelvin",
+                    device.on_resistance_per_k.unwrap_or(0.0),
+                    -0.01,
+                    1.0,
+                )?,
+            }),
+        };
         let diode = match device.diode {
             None => None,
             Some(d) => Some(Diode {
@@ -210,6 +242,7 @@ impl Problem {
             drain_limit_v: device
                 .rating_v
                 .map(|v| v * brief.limits.drain_fraction_of_rating),
+            thermal,
             pins,
             notes,
         };

@@ -99,6 +99,21 @@ pub(super) fn judge(design: &Design, stage: &Stage, reading: &Reading) -> Vec<Ve
             ),
         );
     }
+    if let (Some(bound), Some(junction)) = (limits.junction_c, figures.junction_c) {
+        let heat = super::thermal::device_w(&reading.losses);
+        let ambient = design.brief.ambient_c;
+        add(
+            "junction temperature",
+            junction,
+            bound,
+            junction <= bound,
+            "°C",
+            format!(
+                "The device turns {heat:.4} W into heat; {:.3} K/W from junction to ambient would keep it at the bound.",
+                (bound - ambient).max(0.0) / heat
+            ),
+        );
+    }
     if let Some(bound) = limits.harmonic_dbc {
         let (order, worst) = reading.harmonics_dbc.iter().enumerate().fold(
             (0, f64::NEG_INFINITY),
