@@ -14,6 +14,7 @@ mod schematic;
 mod scope;
 mod shelf;
 mod state;
+mod timing;
 
 use leptos::prelude::*;
 

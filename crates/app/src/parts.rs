@@ -1,5 +1,6 @@
 //! The stage's elements as a table: each is sized or pinned, and says which.
 
+use crate::fields::Field;
 use crate::state::App;
 use evenfall_engine::answer::Values;
 use evenfall_engine::design::{Capacitor, Coil, Design, Fitted, Load};
@@ -21,6 +22,17 @@ pub(crate) struct Element {
     pub(crate) pinned: fn(&Design) -> Option<f64>,
     /// Pins or frees it.
     pub(crate) pin: fn(&mut Fitted, Option<f64>),
+    /// What else a pinned part may state.
+    more: More,
+}
+
+/// A second value of a pinned part, ohms.
+#[derive(Clone, Copy)]
+struct More {
+    name: &'static str,
+    label: &'static str,
+    get: fn(&Design) -> Option<f64>,
+    set: fn(&mut Design, Option<f64>),
 }
 
 /// Every element, from the supply to the load.
@@ -37,6 +49,16 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.feed.and_then(|p| p.esr_ohm),
             })
         },
+        more: More {
+            name: "esr-feed",
+            label: "series resistance (empty: from its Q)",
+            get: |d| d.fitted.feed.and_then(|p| p.esr_ohm),
+            set: |d, v| {
+                if let Some(p) = &mut d.fitted.feed {
+                    p.esr_ohm = v;
+                }
+            },
+        },
     },
     Element {
         key: "shunt",
@@ -49,6 +71,16 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 c_f,
                 esr_ohm: f.shunt.and_then(|p| p.esr_ohm),
             })
+        },
+        more: More {
+            name: "esr-shunt",
+            label: "series resistance (empty: from its Q)",
+            get: |d| d.fitted.shunt.and_then(|p| p.esr_ohm),
+            set: |d, v| {
+                if let Some(p) = &mut d.fitted.shunt {
+                    p.esr_ohm = v;
+                }
+            },
         },
     },
     Element {
@@ -63,6 +95,16 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.series_coil.and_then(|p| p.esr_ohm),
             })
         },
+        more: More {
+            name: "esr-series_coil",
+            label: "series resistance (empty: from its Q)",
+            get: |d| d.fitted.series_coil.and_then(|p| p.esr_ohm),
+            set: |d, v| {
+                if let Some(p) = &mut d.fitted.series_coil {
+                    p.esr_ohm = v;
+                }
+            },
+        },
     },
     Element {
         key: "series_capacitor",
@@ -76,6 +118,16 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.series_capacitor.and_then(|p| p.esr_ohm),
             });
         },
+        more: More {
+            name: "esr-series_capacitor",
+            label: "series resistance (empty: from its Q)",
+            get: |d| d.fitted.series_capacitor.and_then(|p| p.esr_ohm),
+            set: |d, v| {
+                if let Some(p) = &mut d.fitted.series_capacitor {
+                    p.esr_ohm = v;
+                }
+            },
+        },
     },
     Element {
         key: "drain_load",
@@ -88,6 +140,16 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 r_ohm,
                 x_ohm: f.drain_load.map_or(0.0, |p| p.x_ohm),
             })
+        },
+        more: More {
+            name: "load-reactance",
+            label: "series reactance",
+            get: |d| d.fitted.drain_load.map(|p| p.x_ohm),
+            set: |d, v| {
+                if let Some(p) = &mut d.fitted.drain_load {
+                    p.x_ohm = v.unwrap_or(0.0);
+                }
+            },
         },
     },
 ];
@@ -187,6 +249,9 @@ fn Row(app: App, element: Element) -> impl IntoView {
                     on:keydown=key
                     on:blur=move |_| if problem.get_untracked().is_none() { typed.set(None) }/>
                 <span class="problem" id=error_id role="status">{move || problem.get()}</span>
+                <Show when=move || pinned.get().is_some()>
+                    <Field app name=element.more.name label=element.more.label unit="Ω" get=element.more.get set=element.more.set optional=true/>
+                </Show>
             </td>
             <td>
                 {move || if pinned.get().is_some() { "pinned" } else { "sized" }}

@@ -5,38 +5,22 @@
 use criterion::{Criterion, criterion_group, criterion_main};
 use evenfall_engine::design::{Diode, Load};
 use evenfall_engine::exchange::link;
-use evenfall_engine::stage::{Part, Stage};
+use evenfall_engine::stage::Stage;
 use std::hint::black_box;
 
-fn stage(diode: Option<Diode>, load_ohm: f64) -> Stage {
-    let part = |value: f64, esr_ohm: f64| Part { value, esr_ohm };
-    Stage {
-        carrier_hz: 7e6,
-        duty: 0.5,
-        supply_v: 12.0,
-        on_resistance_ohm: 0.1,
-        device_f: 0.0,
-        diode,
-        feed: part(5e-6, 0.1),
-        shunt: part(638.975e-12, 0.01),
-        series_coil: part(845.712e-9, 0.2),
-        series_capacitor: part(822.859e-12, 0.02),
-        load: Load {
-            r_ohm: load_ohm,
-            x_ohm: 0.0,
-        },
-    }
-}
-
 fn solves(c: &mut Criterion) {
-    let plain = stage(None, 7.43927);
-    let diode = stage(
-        Some(Diode {
+    let plain = Stage::example();
+    let diode = Stage {
+        diode: Some(Diode {
             forward_v: 0.7,
             slope_ohm: 0.02,
         }),
-        4.0,
-    );
+        load: Load {
+            r_ohm: 4.0,
+            x_ohm: 0.0,
+        },
+        ..plain
+    };
     let circuit = plain.layout().circuit;
     c.bench_function("equations of one mode", |b| {
         b.iter(|| evenfall_engine::dynamics::mode(black_box(&circuit), black_box(1)));

@@ -153,7 +153,7 @@ pub trait Orbit {
 }
 
 /// The most states that [`solve`] takes.
-pub const MOST_STATES: usize = 16;
+pub const MOST_STATES: usize = 32;
 
 /// The periodic steady state of `circuit` under the clock.
 ///
@@ -170,5 +170,5 @@ pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, O
             }
         };
     }
-    sized!(5, 9, 17)
+    sized!(5, 9, 33)
 }

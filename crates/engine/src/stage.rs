@@ -105,6 +105,27 @@ pub struct Layout {
 }
 
 impl Stage {
+    /// A lossy 7 MHz stage of four states without a diode: what speed is measured on.
+    pub fn example() -> Self {
+        let part = |value: f64, esr_ohm: f64| Part { value, esr_ohm };
+        Self {
+            carrier_hz: 7e6,
+            duty: 0.5,
+            supply_v: 12.0,
+            on_resistance_ohm: 0.1,
+            device_f: 0.0,
+            diode: None,
+            feed: part(5e-6, 0.1),
+            shunt: part(638.975e-12, 0.01),
+            series_coil: part(845.712e-9, 0.2),
+            series_capacitor: part(822.859e-12, 0.02),
+            load: Load {
+                r_ohm: 7.43927,
+                x_ohm: 0.0,
+            },
+        }
+    }
+
     /// The stage's circuit.
     pub fn layout(&self) -> Layout {
         let (ground, supply, drain, coil_end, branch_end, load_end) = (0, 1, 2, 3, 4, 5);

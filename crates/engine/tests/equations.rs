@@ -214,3 +214,50 @@ fn a_state_that_nothing_determines_is_said() {
         Err(OrbitError::Clock { .. })
     ));
 }
+
+#[test]
+fn thirty_two_states_are_solved_and_thirty_three_refused() {
+    // A ladder of RC sections, charged and discharged; its power balance must close.
+    let ladder = |sections: usize| {
+        let mut circuit = Circuit::default();
+        let source = circuit.add("V", 1, 0, v(10.0));
+        let mut resistors = Vec::new();
+        for k in 0..sections {
+            resistors.push(circuit.add("R", 1 + k, 2 + k, r(10.0)));
+            circuit.add("C", 2 + k, 0, c(1e-9));
+        }
+        resistors.push(circuit.add("switch", 1 + sections, 0, Element::Switch { ohm: 3.0 }));
+        let clock = [
+            ClockStep {
+                duration_s: 1e-6,
+                closed: 1,
+            },
+            ClockStep {
+                duration_s: 2e-6,
+                closed: 0,
+            },
+        ];
+        orbit::solve(&circuit, &clock).map(|orbit| {
+            let taken = -10.0 * orbit.mean(Probe::Current(source));
+            let lost: f64 = resistors
+                .iter()
+                .map(|&k| orbit.mean_product(Probe::Voltage(k), Probe::Current(k)))
+                .sum();
+            (taken, lost)
+        })
+    };
+    for sections in [1, 3, 4, 5, 8, 9, 20, 32] {
+        let (taken, lost) = ladder(sections).expect("an orbit");
+        assert!(
+            taken > 0.0 && (lost / taken - 1.0).abs() < 1e-11,
+            "{sections}: {lost} of {taken}"
+        );
+    }
+    assert!(matches!(
+        ladder(33),
+        Err(OrbitError::TooManyStates {
+            states: 33,
+            most: 32
+        })
+    ));
+}

@@ -1,5 +1,7 @@
 //! The page, used: type a brief, read the answer, pin, share, break the storage, go offline.
 
+#![allow(clippy::print_stderr, reason = "figures for the log")]
+
 use evenfall_browser_tests::{Browser, Site, dist};
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::exchange::link;
@@ -239,4 +241,31 @@ fn a_deleted_design_comes_back() {
     );
     browser.press("undo");
     browser.wait("the entry again", stored);
+}
+
+/// Not an assertion on time: the figures go to the log, beside the native ones.
+#[test]
+fn the_engine_runs_in_the_browser_and_its_speed_is_logged() {
+    const ROUNDS: u32 = 2000;
+    let site = Site::start();
+    let browser = Browser::start("speed");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.script(
+        "const glue = new URL(document.querySelector('script[data-glue]').dataset.glue, document.baseURI).href;
+         window.speed = null; import(glue).then(g => { g.microseconds_a_solve(200); window.speed = [...g.microseconds_a_solve(2000)]; })",
+    );
+    browser.wait("the figures", "return window.speed !== null");
+    let figures = browser.script("return window.speed");
+    let [solve_us, sizing_us] = [0, 1].map(|k| figures[k].as_f64().expect("a number"));
+    let stage = evenfall_engine::stage::Stage::example();
+    let start = std::time::Instant::now();
+    for _ in 0..ROUNDS {
+        std::hint::black_box(std::hint::black_box(&stage).solve_to_harmonic(10)).expect("solved");
+    }
+    let native_us = start.elapsed().as_secs_f64() * 1e6 / f64::from(ROUNDS);
+    eprintln!(
+        "steady state {solve_us:.1} us in the browser, {native_us:.1} us natively in the test profile; sizing {sizing_us:.0} us"
+    );
+    assert!(solve_us > 0.0 && sizing_us > solve_us);
 }
