@@ -42,12 +42,21 @@ fn load() -> Shelved {
             .ok()
             .and_then(|text| file::read(&text).ok())
         {
-            Some(design) => shelved.designs.push((name.to_owned(), design)),
-            None => shelved.damaged.push(name.to_owned()),
+            // Placed in the order of names; the standard library's sort is 6 kB to send.
+            Some(design) => {
+                let at = shelved
+                    .designs
+                    .partition_point(|(other, _)| other.as_str() < name);
+                shelved.designs.insert(at, (name.to_owned(), design));
+            }
+            None => {
+                let at = shelved
+                    .damaged
+                    .partition_point(|other| other.as_str() < name);
+                shelved.damaged.insert(at, name.to_owned());
+            }
         }
     }
-    shelved.designs.sort_by(|a, b| a.0.cmp(&b.0));
-    shelved.damaged.sort();
     shelved
 }
 

@@ -272,7 +272,11 @@ fn apply_together(design: &mut Value, postponed: &mut Vec<(String, String)>) {
             .join(".")
     };
     // A kind starts its group anew, so it comes first.
-    postponed.sort_by_key(|(name, _)| !path_of(name).ends_with(".kind"));
+    let (mut ordered, rest): (Vec<_>, Vec<_>) = std::mem::take(postponed)
+        .into_iter()
+        .partition(|(name, _)| path_of(name).ends_with(".kind"));
+    ordered.extend(rest);
+    *postponed = ordered;
     let groups: Vec<String> = postponed.iter().map(|(name, _)| group(name)).collect();
     for wanted in groups {
         let mut trial = design.clone();
