@@ -138,7 +138,10 @@ impl Stage {
             ohm: p.esr_ohm,
         };
         let omega = TAU * self.carrier_hz;
-        let mut c = Circuit::default();
+        let mut c = Circuit {
+            branches: Vec::with_capacity(12),
+            couplings: Vec::new(),
+        };
         let source = c.add(
             "supply",
             supply,

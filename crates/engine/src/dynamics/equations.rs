@@ -2,7 +2,7 @@
 
 use super::flux::Flux;
 use super::rows::Rows;
-use super::tree::{Routes, Tree, node_count};
+use super::tree::{List, Tree};
 use super::{DynamicsError, Kind, Mode, Part};
 use crate::circuit::Circuit;
 use nalgebra::DMatrix;
@@ -66,7 +66,7 @@ impl Equations<'_> {
         let states = capacitors.len() + inductors.len();
         let width = states + 1;
         // State number of each branch that has one.
-        let mut state_of = vec![states; self.circuit.branches.len()];
+        let mut state_of: List<usize> = smallvec::smallvec![states; self.circuit.branches.len()];
         for (state, &branch) in capacitors.iter().chain(&inductors).enumerate() {
             state_of[branch] = state;
         }
@@ -310,12 +310,12 @@ impl Equations<'_> {
                 }
             }
         }
-        let conducts: Vec<bool> = (0..count)
+        let conducts: List<bool> = (0..count)
             .map(|branch| self.parts.iter().any(|p| p.branch == branch))
             .collect();
         if conducts.contains(&false) {
-            let nodes = node_count(self.parts);
-            let routes = Routes::of(self.parts, &self.tree.tree, nodes);
+            let routes = &self.tree.routes;
+            let nodes = routes.nodes();
             for (number, branch) in self.circuit.branches.iter().enumerate() {
                 if !conducts[number] && branch.from < nodes && branch.to < nodes {
                     for (t, sign) in routes.between(branch.from, branch.to) {

@@ -2,24 +2,30 @@
 
 use super::{DynamicsError, Kind, Part};
 use crate::circuit::Circuit;
+use smallvec::{SmallVec, smallvec};
+
+/// A list that is short for any stage and stays on the stack.
+pub(super) type List<T> = SmallVec<[T; 16]>;
+
+/// Tree positions with signs along a way.
+pub(super) type Steps = SmallVec<[(usize, f64); 8]>;
 
 /// A spanning tree that prefers sources, then capacitors, then resistors, then coils.
 pub(super) struct Tree {
     /// Parts in the tree, in the order of their kinds.
-    pub(super) tree: Vec<usize>,
+    pub(super) tree: List<usize>,
     /// Parts outside it, in the order of their kinds, each with the tree parts (as positions
     /// in `tree`) along its path and the sign of each voltage in its own.
-    pub(super) links: Vec<(usize, Vec<(usize, f64)>)>,
+    pub(super) links: List<(usize, Steps)>,
+    /// Ways through the tree.
+    pub(super) routes: Routes,
 }
 
 impl Tree {
     pub(super) fn grow(circuit: &Circuit, parts: &[Part]) -> Result<Self, DynamicsError> {
         let nodes = node_count(parts);
-        let mut group: Vec<usize> = (0..nodes).collect();
-        let (mut tree, mut outside) = (
-            Vec::with_capacity(parts.len()),
-            Vec::with_capacity(parts.len()),
-        );
+        let mut group: List<usize> = (0..nodes).collect();
+        let (mut tree, mut outside) = (List::new(), List::new());
         for kind in [
             Kind::Source,
             Kind::Capacitor,
@@ -41,7 +47,7 @@ impl Tree {
             }
         }
         let routes = Routes::of(parts, &tree, nodes);
-        let mut links = Vec::with_capacity(outside.len());
+        let mut links = List::new();
         for link in outside {
             let steps = routes.between(parts[link].from, parts[link].to);
             if parts[link].kind == Kind::Source {
@@ -55,26 +61,30 @@ impl Tree {
             }
             links.push((link, steps));
         }
-        Ok(Self { tree, links })
+        Ok(Self {
+            tree,
+            links,
+            routes,
+        })
     }
 }
 
-pub(super) fn node_count(parts: &[Part]) -> usize {
+fn node_count(parts: &[Part]) -> usize {
     parts.iter().map(|p| p.from.max(p.to)).max().unwrap_or(0) + 1
 }
 
 /// The tree seen from its roots: each node's way up.
 pub(super) struct Routes {
     /// Parent node, tree position and sign of the step up; none at a root.
-    up: Vec<Option<(usize, usize, f64)>>,
-    depth: Vec<usize>,
+    up: List<Option<(usize, usize, f64)>>,
+    depth: List<usize>,
 }
 
 impl Routes {
-    pub(super) fn of(parts: &[Part], tree: &[usize], nodes: usize) -> Self {
-        let mut up = vec![None; nodes];
-        let mut depth = vec![usize::MAX; nodes];
-        let mut queue = Vec::with_capacity(nodes);
+    fn of(parts: &[Part], tree: &[usize], nodes: usize) -> Self {
+        let mut up = smallvec![None; nodes];
+        let mut depth: List<usize> = smallvec![usize::MAX; nodes];
+        let mut queue: List<usize> = List::new();
         for root in 0..nodes {
             if depth[root] != usize::MAX {
                 continue;
@@ -107,10 +117,15 @@ impl Routes {
         Self { up, depth }
     }
 
+    /// Number of nodes.
+    pub(super) fn nodes(&self) -> usize {
+        self.depth.len()
+    }
+
     /// Tree positions on the way between two nodes, each with the sign of its voltage in the
     /// voltage of `from` against `to`; what is reached where the two are not connected.
-    pub(super) fn between(&self, mut from: usize, mut to: usize) -> Vec<(usize, f64)> {
-        let mut steps = Vec::new();
+    pub(super) fn between(&self, mut from: usize, mut to: usize) -> Steps {
+        let mut steps = Steps::new();
         while from != to {
             let lower = self.depth[from] >= self.depth[to];
             let node = if lower { from } else { to };

@@ -7,11 +7,11 @@
 use nalgebra::{SMatrix, SVector};
 
 /// Terms of the series on the first rung.
-const TERMS: usize = 12;
-/// Balanced norm of A h on the first rung: the series' remainder is below 1e-17.
-const FIRST_RUNG: f64 = 0.25;
+const TERMS: usize = 17;
+/// Balanced norm of A h on the first rung: the series' remainder is below 2e-16.
+const FIRST_RUNG: f64 = 1.0;
 /// A stretch is looked at in at least this many cells (as a power of two).
-pub(super) const CELLS_LOG2: usize = 6;
+pub(super) const CELLS_LOG2: usize = 5;
 /// Most rungs: beyond these the stretch is 2^70 times the fastest time constant.
 const MOST_RUNGS: usize = 70;
 
@@ -105,7 +105,7 @@ pub(super) fn series_at<const N: usize>(terms: &[State<N>; TERMS + 1], fraction:
     x
 }
 
-/// e^X - 1 for a small X: the series to degree 12 by Paterson and Stockmeyer's grouping
+/// e^X - 1 for a small X: the series to degree 17 by Paterson and Stockmeyer's grouping
 /// (SIAM J. Comput. 2, 1973; from memory).
 fn exp_minus_one<const N: usize>(x: &Square<N>) -> Square<N> {
     let mut c = [1.0; TERMS + 1];
@@ -115,9 +115,10 @@ fn exp_minus_one<const N: usize>(x: &Square<N>) -> Square<N> {
     let x2 = x * x;
     let x3 = x2 * x;
     let group = |k: usize| Square::<N>::identity() * c[k] + x * c[k + 1] + x2 * c[k + 2];
-    let high = group(9) + x3 * c[12];
-    let high = group(6) + x3 * high;
-    let high = group(3) + x3 * high;
+    let mut high = group(15);
+    for k in [12, 9, 6, 3] {
+        high = group(k) + x3 * high;
+    }
     x + x2 * c[2] + x3 * high
 }
 
@@ -189,6 +190,8 @@ pub(super) fn narrow<const N: usize>(
 /// not): Newton's method kept within a shrinking bracket.
 fn first_rise(c: &[f64; TERMS + 1]) -> f64 {
     const MOST_STEPS: usize = 80;
+    /// Of a first rung, which is at most a 32nd of the stretch.
+    const CLOSE: f64 = 1e-13;
     let value_and_slope = |t: f64| {
         let (mut value, mut slope) = (c[TERMS], 0.0);
         for k in (0..TERMS).rev() {
@@ -217,7 +220,7 @@ fn first_rise(c: &[f64; TERMS + 1]) -> f64 {
         if !(next > low && next < high) {
             next = 0.5 * (low + high);
         }
-        if (next - t).abs() <= 1e-15 || high - low <= 1e-15 {
+        if (next - t).abs() <= CLOSE || high - low <= CLOSE {
             return high.min(next.max(low));
         }
         t = next;

@@ -1,9 +1,9 @@
 //! Reading a solved orbit: means and products, peaks, spectra, samples.
 //!
 //! Integrals start from Gauss-Legendre quadrature with 8 nodes on the first rung of the
-//! ladder, where it is exact to rounding (the series there has 12 terms and a norm of at
-//! most 1/4), and are doubled rung by rung: W(2h) = W(h) + F W(h) F' for the integral of
-//! x x', and I(2h) = I(h) + e^(-jkwh) F I(h) for that of x e^(-jkwt), with F = e^(Ah).
+//! ladder, where it is exact to rounding (the norm of A h there is at most 1), and are
+//! doubled rung by rung: W(2h) = W(h) + F W(h) F' for the integral of x x', and
+//! I(2h) = I(h) + e^(-jkwh) F I(h) for that of x e^(-jkwt), with F = e^(Ah).
 
 use super::flow::{CELLS_LOG2, Flow, Square, State, narrow, series_at};
 use super::shoot::{Piece, Solution};
