@@ -3,7 +3,7 @@
 use crate::examples;
 use crate::fields::Field;
 use crate::state::App;
-use evenfall_engine::design::{Capacitance, Diode, Feed};
+use evenfall_engine::design::{Aim, Capacitance, Diode, Feed};
 use leptos::prelude::*;
 
 /// The brief and its details.
@@ -35,7 +35,7 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
                     let wanted = event.target().value();
                     if let Some((_, design)) = examples::all().into_iter().find(|(title, _)| *title == wanted) {
                         app.notices.set(Vec::new());
-                        app.design.set(design);
+                        app.replace(design);
                     }
                 }>
                     <option value="">"a starting design…"</option>
@@ -70,6 +70,23 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
                 <Field app name="coil_q" label="Q of the coils (empty: lossless)" unit="" get=|d| d.stage.coil_q set=|d, v| d.stage.coil_q = v optional=true/>
                 <Field app name="capacitor_q" label="Q of the capacitors (empty: lossless)" unit="" get=|d| d.stage.capacitor_q set=|d, v| d.stage.capacitor_q = v optional=true/>
             </div>
+            <p class="starts">
+                <label for="field-aim">"Size for "</label>
+                <select id="field-aim" data-test="field-aim"
+                    prop:value=move || app.design.with(|d| if d.stage.aim == Aim::LeastLoss { "least" } else { "soft" })
+                    on:change:target=move |e| {
+                        let aim = if e.target().value() == "least" { Aim::LeastLoss } else { Aim::SoftSwitching };
+                        app.design.update(|d| d.stage.aim = aim);
+                    }>
+                    <option value="soft">"soft switching: no voltage and no slope at turn-on"</option>
+                    <option value="least">"least loss under the drain limit"</option>
+                </select>
+            </p>
+            <Show when=move || app.design.with(|d| d.brief.power_w.is_none() || d.brief.supply_v.is_none())>
+                <div class="grid">
+                    <Field app name="load" label="Load, where power or supply is left open" unit="Ω" get=|d| Some(d.brief.load.r_ohm) set=|d, v| if let Some(v) = v { d.brief.load.r_ohm = v }/>
+                </div>
+            </Show>
             <h3>"Switch"</h3>
             <div class="grid">
                 <Field app name="on_resistance" label="On-resistance" unit="Ω" get=|d| Some(d.device.on_resistance_ohm) set=|d, v| if let Some(v) = v { d.device.on_resistance_ohm = v }/>
@@ -79,9 +96,11 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
                 <Field app name="diode_v" label="Body diode, forward (empty: none)" unit="V" optional=true
                     get=|d| d.device.diode.map(|x| x.forward_v)
                     set=|d, v| d.device.diode = v.map(|forward_v| Diode { forward_v, slope_ohm: d.device.diode.map_or(0.05, |x| x.slope_ohm) })/>
-                <Field app name="diode_slope" label="Body diode, slope" unit="Ω" optional=true
-                    get=|d| d.device.diode.map(|x| x.slope_ohm)
-                    set=|d, v| if let (Some(x), Some(v)) = (&mut d.device.diode, v) { x.slope_ohm = v }/>
+                <Show when=move || app.design.with(|d| d.device.diode.is_some())>
+                    <Field app name="diode_slope" label="Body diode, slope" unit="Ω"
+                        get=|d| d.device.diode.map(|x| x.slope_ohm)
+                        set=|d, v| if let (Some(x), Some(v)) = (&mut d.device.diode, v) { x.slope_ohm = v }/>
+                </Show>
                 <Field app name="rating_v" label="Drain rating" unit="V" optional=true get=|d| d.device.rating_v set=|d, v| d.device.rating_v = v/>
                 <Field app name="rating_a" label="Switch current rating" unit="A" optional=true get=|d| d.device.rating_a set=|d, v| d.device.rating_a = v/>
             </div>

@@ -6,6 +6,81 @@ use evenfall_engine::quantity;
 use leptos::ev::KeyboardEvent;
 use leptos::prelude::*;
 
+/// What is being typed into one field.
+#[derive(Clone, Copy)]
+pub(crate) struct Typing {
+    text: RwSignal<Option<String>>,
+    /// What is wrong with it.
+    pub(crate) problem: RwSignal<Option<String>>,
+}
+
+impl Typing {
+    /// Nothing typed; forgotten whenever another design is opened.
+    pub(crate) fn new(app: App) -> Self {
+        let typing = Self {
+            text: RwSignal::new(None),
+            problem: RwSignal::new(None),
+        };
+        Effect::new(move |_| {
+            app.opened.track();
+            typing.forget();
+        });
+        typing
+    }
+
+    /// Shows the value again instead of the text.
+    pub(crate) fn forget(self) {
+        self.text.set(None);
+        self.problem.set(None);
+    }
+
+    /// On leaving the field: wrong text stays to be mended.
+    pub(crate) fn leave(self) {
+        if self.problem.get_untracked().is_none() {
+            self.text.set(None);
+        }
+    }
+
+    /// The text, or the value where nothing is being typed.
+    pub(crate) fn shown(self, value: Option<f64>, unit: &str) -> String {
+        self.text
+            .get()
+            .unwrap_or_else(|| value.map_or_else(String::new, |v| quantity::format(v, unit)))
+    }
+
+    /// Takes what was typed: a value, nothing where that is allowed, or none where it is wrong.
+    pub(crate) fn read(self, text: String, unit: &str, optional: bool) -> Option<Option<f64>> {
+        let read = if text.trim().is_empty() && optional {
+            Ok(None)
+        } else {
+            quantity::parse(&text, unit).map(Some)
+        };
+        self.text.set(Some(text));
+        self.problem
+            .set(read.as_ref().err().map(ToString::to_string));
+        read.ok()
+    }
+}
+
+/// The value one arrow key away: a hundredth, with shift a tenth; from zero a first small step.
+pub(crate) fn step(event: &KeyboardEvent, old: f64, unit: &str) -> Option<f64> {
+    const FIRST: f64 = 0.01;
+    let up = match event.key().as_str() {
+        "ArrowUp" => true,
+        "ArrowDown" => false,
+        _ => return None,
+    };
+    event.prevent_default();
+    let share = if event.shift_key() { 0.1 } else { 0.01 };
+    let stepped = match (old == 0.0, up == (old >= 0.0)) {
+        (true, true) => FIRST,
+        (true, false) => 0.0,
+        (false, true) => old * (1.0 + share),
+        (false, false) => old / (1.0 + share),
+    };
+    Some(quantity::parse(&quantity::format(stepped, unit), unit).unwrap_or(stepped))
+}
+
 /// A quantity of the design. Wrong text keeps the last good value and says what is wrong.
 #[component]
 pub(crate) fn Field(
@@ -26,57 +101,25 @@ pub(crate) fn Field(
     #[prop(optional)]
     hint: &'static str,
 ) -> impl IntoView {
-    let typed: RwSignal<Option<String>> = RwSignal::new(None);
-    let problem: RwSignal<Option<String>> = RwSignal::new(None);
+    let typing = Typing::new(app);
     let value = Memo::new(move |_| app.design.with(get));
-    let shown = move || {
-        typed.get().unwrap_or_else(|| {
-            value
-                .get()
-                .map_or_else(String::new, |v| quantity::format(v, unit))
-        })
+    let put = move |number: Option<f64>| {
+        if value.get_untracked() != number {
+            app.design.update(|d| set(d, number));
+        }
     };
     let input = move |text: String| {
-        if text.trim().is_empty() && optional {
-            problem.set(None);
-            app.design.update(|d| set(d, None));
-        } else {
-            match quantity::parse(&text, unit) {
-                Ok(number) => {
-                    problem.set(None);
-                    if value.get_untracked() != Some(number) {
-                        app.design.update(|d| set(d, Some(number)));
-                    }
-                }
-                Err(error) => problem.set(Some(error.to_string())),
-            }
+        if let Some(number) = typing.read(text, unit, optional) {
+            put(number);
         }
-        typed.set(Some(text));
     };
     let key = move |event: KeyboardEvent| {
-        let up = match event.key().as_str() {
-            "ArrowUp" => true,
-            "ArrowDown" => false,
-            _ => return,
-        };
-        let Some(old) = value.get_untracked() else {
-            return;
-        };
-        event.prevent_default();
-        let share = if event.shift_key() { 0.1 } else { 0.01 };
-        let stepped = if up {
-            old * (1.0 + share)
-        } else {
-            old / (1.0 + share)
-        };
-        let rounded = quantity::parse(&quantity::format(stepped, unit), unit).unwrap_or(stepped);
-        problem.set(None);
-        typed.set(None);
-        app.design.update(|d| set(d, Some(rounded)));
-    };
-    let blur = move |_| {
-        if problem.get_untracked().is_none() {
-            typed.set(None);
+        if let Some(next) = value
+            .get_untracked()
+            .and_then(|old| step(&event, old, unit))
+        {
+            typing.forget();
+            put(Some(next));
         }
     };
     let id = format!("field-{name}");
@@ -86,9 +129,8 @@ pub(crate) fn Field(
         let at: f64 = event_target_value(&event).parse().unwrap_or(0.0);
         let text = quantity::format(range.0 * libm::pow(range.1 / range.0, at / 1000.0), unit);
         if let Ok(number) = quantity::parse(&text, unit) {
-            problem.set(None);
-            typed.set(None);
-            app.design.update(|d| set(d, Some(number)));
+            typing.forget();
+            put(Some(number));
         }
     };
     view! {
@@ -100,12 +142,12 @@ pub(crate) fn Field(
                 type="text"
                 autocomplete="off"
                 spellcheck="false"
-                prop:value=shown
-                aria-invalid=move || problem.get().is_some().to_string()
+                prop:value=move || typing.shown(value.get(), unit)
+                aria-invalid=move || typing.problem.get().is_some().to_string()
                 aria-describedby=described
                 on:input:target=move |event| input(event.target().value())
                 on:keydown=key
-                on:blur=blur
+                on:blur=move |_| typing.leave()
             />
             {slider.map(|range| view! {
                 <input
@@ -113,6 +155,7 @@ pub(crate) fn Field(
                     min="0"
                     max="1000"
                     aria-label=format!("{label}, slider")
+                    aria-valuetext=move || value.get().map_or_else(String::new, |v| quantity::format(v, unit))
                     data-test=format!("slide-{name}")
                     prop:value=move || {
                         let now = value.get().unwrap_or(range.0).max(1e-300);
@@ -121,7 +164,7 @@ pub(crate) fn Field(
                     on:input=move |event| slide(event, range)
                 />
             })}
-            <span class="problem" id=error_id role="status">{move || problem.get()}</span>
+            <span class="problem" id=error_id role="status">{move || typing.problem.get()}</span>
         </span>
     }
 }

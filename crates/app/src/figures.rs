@@ -13,7 +13,12 @@ fn per_cent(share: f64) -> String {
 pub(crate) fn Ledger(app: App) -> impl IntoView {
     let summary = move || {
         if let Some(reason) = app.refusal() {
-            return format!("No such stage: {reason}. Shown below is the last stage that exists.");
+            let below = if app.last.get().is_some() {
+                " Shown below is the last stage that exists."
+            } else {
+                ""
+            };
+            return format!("No such stage: {reason}.{below}");
         }
         let failing: Vec<String> = app
             .last
@@ -156,6 +161,18 @@ pub(crate) fn Figures(app: App) -> impl IntoView {
                 "",
             ),
             (
+                "turn_on_slope_v_per_s",
+                "Slope of the drain voltage at turn-on",
+                quantity::format(
+                    tidy(
+                        f.turn_on_slope_v_per_s,
+                        f.drain_peak_v * app.shown.with(|d| d.brief.carrier_hz),
+                    ),
+                    "V/s",
+                ),
+                "",
+            ),
+            (
                 "diode_fraction",
                 "Body diode conducts",
                 per_cent(f.diode_fraction),
@@ -258,6 +275,15 @@ pub(crate) fn Spectrum(app: App) -> impl IntoView {
                 {bars}
             </svg>
             <p class="origin">"dBc by order of harmonic; the carrier is 0 dBc, the foot of the bars -80 dBc."</p>
+            <details>
+                <summary>"Harmonics 2 to 20 as figures"</summary>
+                <table><thead><tr><th scope="col">"Order"</th><th scope="col" class="number">"Load current"</th><th scope="col" class="number">"Drain voltage"</th></tr></thead>
+                <tbody>{move || app.last.get().map(|s| {
+                    s.harmonics_dbc.iter().zip(&s.drain_harmonics_v[2..]).enumerate().map(|(k, (dbc, volt))| view! {
+                        <tr><th scope="row">{k + 2}</th><td class="number">{format!("{dbc:.2} dBc")}</td><td class="number">{quantity::format(*volt, "V")}</td></tr>
+                    }).collect_view()
+                })}</tbody></table>
+            </details>
         </section>
     }
 }

@@ -1,10 +1,9 @@
 //! The stage's elements as a table: each is sized or pinned, and says which.
 
-use crate::fields::Field;
+use crate::fields::{Field, Typing, step};
 use crate::state::App;
 use evenfall_engine::answer::Values;
 use evenfall_engine::design::{Capacitor, Coil, Design, Fitted, Load};
-use evenfall_engine::quantity;
 use leptos::prelude::*;
 
 /// One element of the stage as the page knows it.
@@ -166,7 +165,11 @@ pub(crate) fn Parts(app: App) -> impl IntoView {
             });
         }
     };
-    let free = move |_| app.design.update(|d| d.fitted = Fitted::default());
+    let free = move |_| {
+        let mut design = app.design.get_untracked();
+        design.fitted = Fitted::default();
+        app.replace(design);
+    };
     let as_built = move || app.design.with(|d| d.fitted.is_complete());
     view! {
         <section class="card">
@@ -192,48 +195,21 @@ pub(crate) fn Parts(app: App) -> impl IntoView {
 
 #[component]
 fn Row(app: App, element: Element) -> impl IntoView {
-    let typed: RwSignal<Option<String>> = RwSignal::new(None);
-    let problem: RwSignal<Option<String>> = RwSignal::new(None);
+    let typing = Typing::new(app);
     let pinned = Memo::new(move |_| app.design.with(element.pinned));
     let sized = Memo::new(move |_| app.last.get().map(|s| (element.value)(&s.values)));
-    let shown = move || {
-        typed.get().unwrap_or_else(|| {
-            pinned
-                .get()
-                .or(sized.get())
-                .map_or_else(String::new, |v| quantity::format(v, element.unit))
-        })
-    };
+    let value = move || pinned.get().or(sized.get());
     let set = move |value: Option<f64>| app.design.update(|d| (element.pin)(&mut d.fitted, value));
     let input = move |text: String| {
-        if text.trim().is_empty() {
-            problem.set(None);
-            set(None);
-        } else {
-            match quantity::parse(&text, element.unit) {
-                Ok(value) => {
-                    problem.set(None);
-                    set(Some(value));
-                }
-                Err(error) => problem.set(Some(error.to_string())),
-            }
+        if let Some(value) = typing.read(text, element.unit, true) {
+            set(value);
         }
-        typed.set(Some(text));
     };
     let key = move |event: leptos::ev::KeyboardEvent| {
-        let factor = match event.key().as_str() {
-            "ArrowUp" => 1.01,
-            "ArrowDown" => 1.0 / 1.01,
-            _ => return,
-        };
-        if let Some(old) = pinned.get_untracked().or(sized.get_untracked()) {
-            event.prevent_default();
-            typed.set(None);
-            problem.set(None);
-            let text = quantity::format(old * factor, element.unit);
-            set(Some(
-                quantity::parse(&text, element.unit).unwrap_or(old * factor),
-            ));
+        let old = pinned.get_untracked().or(sized.get_untracked());
+        if let Some(next) = old.and_then(|old| step(&event, old, element.unit)) {
+            typing.forget();
+            set(Some(next));
         }
     };
     let id = format!("pin-{}", element.key);
@@ -242,13 +218,13 @@ fn Row(app: App, element: Element) -> impl IntoView {
         <tr class:pinned=move || pinned.get().is_some()>
             <th scope="row"><label for=id.clone()>{element.label}</label></th>
             <td>
-                <input id=id.clone() data-test=id type="text" autocomplete="off" spellcheck="false" prop:value=shown
-                    aria-invalid=move || problem.get().is_some().to_string()
+                <input id=id.clone() data-test=id type="text" autocomplete="off" spellcheck="false" prop:value=move || typing.shown(value(), element.unit)
+                    aria-invalid=move || typing.problem.get().is_some().to_string()
                     aria-describedby=error_id.clone()
                     on:input:target=move |e| input(e.target().value())
                     on:keydown=key
-                    on:blur=move |_| if problem.get_untracked().is_none() { typed.set(None) }/>
-                <span class="problem" id=error_id role="status">{move || problem.get()}</span>
+                    on:blur=move |_| typing.leave()/>
+                <span class="problem" id=error_id role="status">{move || typing.problem.get()}</span>
                 <Show when=move || pinned.get().is_some()>
                     <Field app name=element.more.name label=element.more.label unit="Ω" get=element.more.get set=element.more.set optional=true/>
                 </Show>
@@ -259,7 +235,7 @@ fn Row(app: App, element: Element) -> impl IntoView {
                 <Show when=move || pinned.get().is_some()>
                     <button type="button" data-test=format!("free-{}", element.key)
                         aria-label=format!("Free {}", element.label)
-                        on:click=move |_| { typed.set(None); problem.set(None); set(None); }>"free"</button>
+                        on:click=move |_| { typing.forget(); set(None); }>"free"</button>
                 </Show>
             </td>
         </tr>

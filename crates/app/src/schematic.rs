@@ -25,7 +25,7 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
         })
     };
     let state = move |index: usize| {
-        let pinned = app.design.with(|d| (ELEMENTS[index].pinned)(d)).is_some();
+        let pinned = app.shown.with(|d| (ELEMENTS[index].pinned)(d)).is_some();
         if pinned { "● pinned" } else { "○ sized" }
     };
     let label = move |index: usize, x: i32, y: i32, name: &'static str| {
@@ -40,9 +40,9 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
             .get()
             .map_or_else(String::new, |s| quantity::format(s.values.supply_v, "V"))
     };
-    let on = move || quantity::format(app.design.with(|d| d.device.on_resistance_ohm), "Ω");
+    let on = move || quantity::format(app.shown.with(|d| d.device.on_resistance_ohm), "Ω");
     let output_capacitance = move || {
-        app.design.with(|d| match d.device.capacitance {
+        app.shown.with(|d| match d.device.capacitance {
             Capacitance::Constant { c_f } => format!("with {}", quantity::format(c_f, "F")),
             _ => String::new(),
         })
@@ -79,7 +79,7 @@ pub(crate) fn Schematic(app: App) -> impl IntoView {
                 <circle cx="320" cy="110" r="3"/>
                 <circle cx="200" cy="152" r="2.5"/>
                 <circle cx="200" cy="200" r="2.5"/>
-                <Show when=move || app.design.with(|d| d.device.diode.is_some())>
+                <Show when=move || app.shown.with(|d| d.device.diode.is_some())>
                     <g class="wire"><path d="M200 130H228V168M219 168H237M228 168L219 184H237ZM228 184V225H200"/></g>
                 </Show>
                 <text x="56" y="182" class="name">"Supply"</text>

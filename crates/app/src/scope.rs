@@ -9,6 +9,7 @@ use leptos::html::Canvas;
 use leptos::prelude::*;
 use plotters::prelude::*;
 use wasm_bindgen::JsCast;
+use wasm_bindgen::closure::Closure;
 
 const HEIGHT: f64 = 132.0;
 
@@ -50,9 +51,24 @@ const TRACES: [Trace; 3] = [
 pub(crate) fn Scope(app: App) -> impl IntoView {
     let periods = RwSignal::new(1usize);
     let cursor: RwSignal<Option<usize>> = RwSignal::new(None);
+    let by_key = RwSignal::new(false);
     let resized = RwSignal::new(0u32);
     let listener = window_event_listener(leptos::ev::resize, move |_| resized.update(|n| *n += 1));
-    on_cleanup(move || listener.remove());
+    // Paper is light whatever the screen is; a change of theme redraws too.
+    let printing = RwSignal::new(false);
+    let before = window_event_listener(leptos::ev::beforeprint, move |_| printing.set(true));
+    let after = window_event_listener(leptos::ev::afterprint, move |_| printing.set(false));
+    if let Ok(Some(theme)) = window().match_media("(prefers-color-scheme: dark)") {
+        let redraw = Closure::<dyn FnMut()>::new(move || resized.update(|n| *n += 1));
+        theme.set_onchange(Some(redraw.as_ref().unchecked_ref()));
+        // It lives as long as the page does.
+        redraw.forget();
+    }
+    on_cleanup(move || {
+        listener.remove();
+        before.remove();
+        after.remove();
+    });
     let readout = move || {
         let Some(s) = app.last.get() else {
             return String::new();
@@ -80,7 +96,7 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
         let Some(period) = app.last.get().and_then(|s| s.waveforms.t_s.last().copied()) else {
             return String::new();
         };
-        let opens = period * app.design.with(|d| d.stage.duty);
+        let opens = period * app.shown.with(|d| d.stage.duty);
         format!(
             "Time from 0 to {}: the switch closes at 0 and opens at {} (upright lines).",
             quantity::format(period * periods.get() as f64, "s"),
@@ -100,12 +116,14 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             _ => return,
         };
         event.prevent_default();
+        by_key.set(true);
         let span = total() as i64;
         let now = cursor.get_untracked().map_or(0, |k| k as i64);
         let step = if event.shift_key() { 16 * step } else { step };
         cursor.set(usize::try_from((now + step).rem_euclid(span)).ok());
     };
     let point = move |event: leptos::ev::PointerEvent| {
+        by_key.set(false);
         if let Some(element) = event
             .target()
             .and_then(|t| t.dyn_into::<web_sys::Element>().ok())
@@ -125,10 +143,10 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
                 <button type="button" aria-pressed=move || (periods.get() == 2).to_string() on:click=move |_| periods.set(2)>"two periods"</button>
             </p>
             <div class="traces" data-test="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
-                {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized/> }).collect_view()}
+                {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized printing/> }).collect_view()}
             </div>
             <p class="origin">{axis}</p>
-            <p class="readout" aria-live="polite" data-test="readout">{readout}</p>
+            <p class="readout" aria-live=move || if by_key.get() { "polite" } else { "off" } data-test="readout">{readout}</p>
         </section>
     }
 }
@@ -140,6 +158,7 @@ fn TraceView(
     periods: RwSignal<usize>,
     cursor: RwSignal<Option<usize>>,
     resized: RwSignal<u32>,
+    printing: RwSignal<bool>,
 ) -> impl IntoView {
     let canvas: NodeRef<Canvas> = NodeRef::new();
     Effect::new(move |_| {
@@ -148,14 +167,13 @@ fn TraceView(
             return;
         };
         // A canvas without a context leaves the readout and the figures to speak.
-        let _ = draw(
-            &canvas,
-            trace,
-            &solved.waveforms,
-            periods.get(),
-            cursor.get(),
-            app.design.with(|d| d.stage.duty),
-        );
+        let moment = Moment {
+            periods: periods.get(),
+            cursor: cursor.get(),
+            duty: app.shown.with(|d| d.stage.duty),
+            dark: !printing.get() && screen_is_dark(),
+        };
+        let _ = draw(&canvas, trace, &solved.waveforms, moment);
     });
     let range = move || {
         app.last.with(|s| {
@@ -181,24 +199,39 @@ fn TraceView(
     }
 }
 
+/// What a trace is drawn for.
+struct Moment {
+    periods: usize,
+    cursor: Option<usize>,
+    duty: f64,
+    dark: bool,
+}
+
+fn screen_is_dark() -> bool {
+    window()
+        .match_media("(prefers-color-scheme: dark)")
+        .ok()
+        .flatten()
+        .is_some_and(|m| m.matches())
+}
+
 fn draw(
     canvas: &web_sys::HtmlCanvasElement,
     trace: &Trace,
     waveforms: &Waveforms,
-    periods: usize,
-    cursor: Option<usize>,
-    duty: f64,
+    moment: Moment,
 ) -> Option<()> {
     let ratio = window().device_pixel_ratio().max(1.0);
     let width = f64::from(canvas.client_width()).max(120.0);
     canvas.set_width((width * ratio) as u32);
     canvas.set_height((HEIGHT * ratio) as u32);
     let fine = ratio * FINER;
-    let dark = window()
-        .match_media("(prefers-color-scheme: dark)")
-        .ok()
-        .flatten()
-        .is_some_and(|m| m.matches());
+    let Moment {
+        periods,
+        cursor,
+        duty,
+        dark,
+    } = moment;
     let (ink, colour) = if dark {
         (RGBColor(150, 160, 164), trace.dark)
     } else {

@@ -71,6 +71,13 @@ fn store(name: &str, design: &Design) -> Result<(), String> {
     })
 }
 
+/// Deletes an entry; nothing where storage is gone.
+fn forget(name: &str) {
+    if available() {
+        LocalStorage::delete(format!("{PREFIX}{name}"));
+    }
+}
+
 /// A name that no entry bears, damaged ones included.
 fn free_name(wanted: &str, shelved: &Shelved) -> String {
     let taken = |name: &str| {
@@ -97,21 +104,43 @@ pub(crate) fn Shelf(app: App) -> impl IntoView {
         message.set(Some(outcome.map_or_else(|problem| problem, |()| done)));
         shelved.set(load());
     };
+    // What this tab last read from or wrote to storage: an entry that has changed since is
+    // somebody else's and is not replaced.
+    let known: StoredValue<Option<(String, Design)>> = StoredValue::new(None);
     let save = move |_| {
-        let design = app.design.get_untracked();
-        let name = if design.name.trim().is_empty() {
+        let mut design = app.design.get_untracked();
+        let wanted = if design.name.trim().is_empty() {
             "unnamed".to_owned()
         } else {
             design.name.trim().to_owned()
         };
-        if shelved.with_untracked(|s| s.damaged.contains(&name)) {
-            message.set(Some(format!("An entry \"{name}\" that cannot be read is stored; choose another name so that it is kept.")));
-            return;
+        let now = load();
+        let stored = now
+            .designs
+            .iter()
+            .find(|(name, _)| *name == wanted)
+            .cloned();
+        let ours = stored.is_none() || stored == known.get_value();
+        let name = if ours && !now.damaged.contains(&wanted) {
+            wanted.clone()
+        } else {
+            free_name(&wanted, &now)
+        };
+        design.name.clone_from(&name);
+        let outcome = store(&name, &design);
+        if outcome.is_ok() {
+            known.set_value(Some((name.clone(), design.clone())));
+            app.design.set(design);
         }
-        report(store(&name, &design), format!("Saved as \"{name}\"."));
+        let done = if name == wanted {
+            format!("Saved as \"{name}\".")
+        } else {
+            format!("There was another \"{wanted}\" already, which stays: saved as \"{name}\".")
+        };
+        report(outcome, done);
     };
     let remove = move |name: String, design: Design| {
-        LocalStorage::delete(format!("{PREFIX}{name}"));
+        forget(&name);
         removed.set(Some((name.clone(), design)));
         report(Ok(()), format!("\"{name}\" was deleted."));
     };
@@ -150,14 +179,14 @@ pub(crate) fn Shelf(app: App) -> impl IntoView {
             },
         );
         if outcome.is_ok() {
-            LocalStorage::delete(format!("{PREFIX}{old}"));
+            forget(&old);
         }
         report(outcome, format!("\"{old}\" is now \"{name}\"."));
     };
     let pasted = RwSignal::new(String::new());
     let open_file = move |_| match file::read(&pasted.get_untracked()) {
         Ok(design) => {
-            app.design.set(design);
+            app.replace(design);
             message.set(Some("The pasted design is open.".to_owned()));
         }
         Err(error) => message.set(Some(error.to_string())),
@@ -182,10 +211,10 @@ pub(crate) fn Shelf(app: App) -> impl IntoView {
             <ul class="shelf">
                 {move || shelved.get().designs.into_iter().map(|(name, design)| {
                     let (d1, d2, d3, d4) = (design.clone(), design.clone(), design.clone(), design);
-                    let (n1, n2, n3) = (name.clone(), name.clone(), name.clone());
+                    let (n1, n2, n3, n4) = (name.clone(), name.clone(), name.clone(), name.clone());
                     view! {
                         <li>
-                            <button type="button" class="open" on:click=move |_| app.design.set(d1.clone())>{name}</button>
+                            <button type="button" class="open" on:click=move |_| { known.set_value(Some((n4.clone(), d1.clone()))); app.replace(d1.clone()); }>{name}</button>
                             <button type="button" on:click=move |_| duplicate(n1.clone(), d2.clone())>"copy"</button>
                             <button type="button" on:click=move |_| rename(n2.clone(), d3.clone())>"rename"</button>
                             <button type="button" on:click=move |_| remove(n3.clone(), d4.clone())>"delete"</button>

@@ -17,6 +17,10 @@ pub(crate) struct App {
     pub(crate) answer: Memo<Arc<Answer>>,
     /// The last answer that was a stage: stays when the design is refused.
     pub(crate) last: Memo<Option<Arc<Solved>>>,
+    /// The design that `last` belongs to.
+    pub(crate) shown: Memo<Arc<Design>>,
+    /// Counts the designs opened: text half typed belongs to the one before.
+    pub(crate) opened: RwSignal<u32>,
     /// What the person should be told outside any field.
     pub(crate) notices: RwSignal<Vec<String>>,
 }
@@ -33,12 +37,26 @@ impl App {
                 Answer::Refused(_) => old.cloned().flatten(),
             },
         );
+        let shown = Memo::new(
+            move |old: Option<&Arc<Design>>| match (&*answer.get(), old) {
+                (Answer::Refused(_), Some(old)) => Arc::clone(old),
+                _ => Arc::new(design.get()),
+            },
+        );
         Self {
             design,
             answer,
             last,
+            shown,
+            opened: RwSignal::new(0),
             notices: RwSignal::new(notices),
         }
+    }
+
+    /// Replaces the design by another one.
+    pub(crate) fn replace(&self, design: Design) {
+        self.design.set(design);
+        self.opened.update(|count| *count += 1);
     }
 
     /// Why there is no stage, if there is none.
@@ -52,18 +70,19 @@ impl App {
 
 fn from_address() -> (Design, Vec<String>) {
     let hash = window().location().hash().unwrap_or_default();
+    let start = || examples::all().remove(0).1;
     if hash.len() < 2 {
-        return (examples::all().remove(0).1, Vec::new());
+        return (start(), Vec::new());
     }
-    let (design, problems) = link::read(&hash);
+    let (design, mut problems) = link::read(&hash);
     if problems.is_empty() {
-        (design, problems)
-    } else {
-        let mut notices =
-            vec!["The link could not be read whole, so the starting design is shown.".to_owned()];
-        notices.extend(problems);
-        (examples::all().remove(0).1, notices)
+        return (design, problems);
     }
+    problems.insert(
+        0,
+        "The link could not be read whole, so the starting design is shown.".to_owned(),
+    );
+    (start(), problems)
 }
 
 /// Keeps the address's fragment at the design, and the design at a fragment edited by hand.
@@ -91,9 +110,21 @@ pub(crate) fn keep_address(app: App) {
     let listener = window_event_listener(leptos::ev::hashchange, move |_| {
         let hash = window().location().hash().unwrap_or_default();
         if hash.trim_start_matches('#') != app.design.with_untracked(link::write) {
-            let (design, notices) = from_address();
-            app.notices.set(notices);
-            app.design.set(design);
+            let (design, mut problems) = link::read(&hash);
+            if problems.is_empty() && hash.len() > 1 {
+                app.replace(design);
+            } else {
+                // What is on the page may be unsaved: it stays.
+                problems.insert(
+                    0,
+                    "The edited address is no design; the one on the page stays.".to_owned(),
+                );
+            }
+            app.notices.set(if problems.len() > 1 {
+                problems
+            } else {
+                Vec::new()
+            });
         }
     });
     on_cleanup(move || listener.remove());

@@ -269,3 +269,58 @@ fn the_engine_runs_in_the_browser_and_its_speed_is_logged() {
     );
     assert!(solve_us > 0.0 && sizing_us > solve_us);
 }
+
+#[test]
+fn saving_replaces_only_what_this_tab_knows() {
+    let site = Site::start();
+    let browser = Browser::start("save");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.type_into("field-name", "mine");
+    browser.press("save");
+    browser.type_into("field-supply", "40");
+    browser.press("save");
+    let names = "return JSON.stringify(Object.keys(localStorage).filter(k => k.startsWith('evenfall/')).sort())";
+    assert_eq!(browser.script(names), "[\"evenfall/1/design/mine\"]");
+    // Another tab saves under the same name.
+    browser.script("const k = 'evenfall/1/design/mine'; localStorage.setItem(k, localStorage.getItem(k).replace('40', '41'))");
+    browser.press("save");
+    assert_eq!(
+        browser.script(names),
+        "[\"evenfall/1/design/mine\",\"evenfall/1/design/mine 2\"]"
+    );
+}
+
+#[test]
+fn wrong_text_is_forgotten_when_another_design_is_opened() {
+    let site = Site::start();
+    let browser = Browser::start("stale");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.type_into("field-supply", "4 parsnips");
+    assert!(
+        browser
+            .script("return document.getElementById('field-supply-problem').textContent.length")
+            .as_u64()
+            > Some(5)
+    );
+    browser.script("const s = document.querySelector('[data-test=start]'); s.selectedIndex = 3; s.dispatchEvent(new Event('change', {bubbles: true}))");
+    browser.wait(
+        "the new supply",
+        "return document.querySelector('[data-test=field-supply]').value === '24 V'",
+    );
+    assert_eq!(
+        browser.script("return document.getElementById('field-supply-problem').textContent"),
+        ""
+    );
+    // An address edited to nonsense leaves the page's design alone.
+    browser.script("location.hash = 'e=1&v=nonsense'");
+    browser.wait(
+        "the notice",
+        "return document.querySelector('.notices').textContent.includes('stays')",
+    );
+    assert_eq!(
+        browser.script("return document.querySelector('[data-test=field-supply]').value"),
+        "24 V"
+    );
+}

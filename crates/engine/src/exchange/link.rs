@@ -67,6 +67,12 @@ pub fn base() -> Design {
     }
 }
 
+/// The design file as a JSON value. By way of its text, so that the page carries one writer
+/// and one reader of designs and not two.
+fn as_json(design: &Design) -> Value {
+    serde_json::from_str(&file::write(design)).unwrap_or_default()
+}
+
 /// Leaves of a JSON value with their paths.
 fn leaves(value: &Value, path: &str, into: &mut Vec<(String, Value)>) {
     let join = |key: &str| {
@@ -88,11 +94,7 @@ fn leaves(value: &Value, path: &str, into: &mut Vec<(String, Value)>) {
 
 fn flat(design: &Design) -> Vec<(String, Value)> {
     let mut list = Vec::new();
-    leaves(
-        &serde_json::to_value(design).unwrap_or_default(),
-        "",
-        &mut list,
-    );
+    leaves(&as_json(design), "", &mut list);
     list
 }
 
@@ -136,7 +138,7 @@ pub fn write(design: &Design) -> String {
 /// The design of a fragment, and a sentence for each pair that could not be read.
 pub fn read(fragment: &str) -> (Design, Vec<String>) {
     let mut problems = Vec::new();
-    let mut design = serde_json::to_value(base()).unwrap_or_default();
+    let mut design = as_json(&base());
     let mut seen = Vec::new();
     let fragment = fragment.trim_start_matches('#');
     if fragment.len() > 20_000 {
@@ -179,7 +181,7 @@ pub fn read(fragment: &str) -> (Design, Vec<String>) {
         ));
     }
     (
-        serde_json::from_value(design).unwrap_or_else(|_| base()),
+        file::read(&design.to_string()).unwrap_or_else(|_| base()),
         problems,
     )
 }
