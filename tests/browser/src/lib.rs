@@ -3,91 +3,21 @@
 
 use serde_json::{Value, json};
 use std::io::{BufRead, BufReader, Read, Write};
-use std::net::{TcpListener, TcpStream};
+use std::net::TcpStream;
 use std::os::unix::process::CommandExt;
 use std::path::{Path, PathBuf};
 use std::process::{Child, Command, Stdio};
-use std::sync::Arc;
-use std::sync::atomic::{AtomicBool, Ordering};
 use std::time::{Duration, Instant};
-
-/// A server of the finished page that can be switched off.
-pub struct Site {
-    /// Where it is.
-    pub address: String,
-    up: Arc<AtomicBool>,
-}
-
-impl Site {
-    /// Serves dist/.
-    pub fn start() -> Self {
-        let listener = TcpListener::bind("127.0.0.1:0").expect("a port");
-        let address = format!("http://{}/", listener.local_addr().expect("its address"));
-        let up = Arc::new(AtomicBool::new(true));
-        let serving = Arc::clone(&up);
-        std::thread::spawn(move || {
-            for stream in listener.incoming().flatten() {
-                if serving.load(Ordering::SeqCst) {
-                    std::thread::spawn(move || answer(stream));
-                }
-            }
-        });
-        Self { address, up }
-    }
-
-    /// Closes every further connection unanswered, as a network that is gone.
-    pub fn go_offline(&self) {
-        self.up.store(false, Ordering::SeqCst);
-    }
-}
+pub use xtask::site::Site;
 
 /// The folder of the finished page.
 pub fn dist() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("../../dist")
 }
 
-fn answer(mut stream: TcpStream) {
-    let mut reader = BufReader::new(stream.try_clone().expect("a second handle"));
-    let mut request = String::new();
-    if reader.read_line(&mut request).is_err() {
-        return;
-    }
-    let mut line = String::new();
-    while reader.read_line(&mut line).is_ok_and(|n| n > 2) {
-        line.clear();
-    }
-    let path = request
-        .split_whitespace()
-        .nth(1)
-        .unwrap_or("/")
-        .split('?')
-        .next()
-        .unwrap_or("/");
-    let name = if path == "/" {
-        "index.html"
-    } else {
-        path.trim_start_matches('/')
-    };
-    let kind = match name.rsplit('.').next() {
-        Some("html") => "text/html",
-        Some("js") => "text/javascript",
-        Some("css") => "text/css",
-        Some("wasm") => "application/wasm",
-        Some("svg") => "image/svg+xml",
-        _ => "application/json",
-    };
-    let (status, body) = match std::fs::read(dist().join(name)) {
-        Ok(body) => ("200 OK", body),
-        Err(_) => ("404 Not Found", Vec::new()),
-    };
-    let head = format!(
-        "HTTP/1.1 {status}\r\nContent-Type: {kind}\r\nContent-Length: {}\r\nConnection: close\r\n\r\n",
-        body.len()
-    );
-    // The browser may have gone; that is its affair.
-    let _ = stream
-        .write_all(head.as_bytes())
-        .and_then(|()| stream.write_all(&body));
+/// A server of the finished page.
+pub fn page() -> Site {
+    Site::of(dist(), 0).expect("a port")
 }
 
 /// A browser with a fresh profile.

@@ -2,7 +2,7 @@
 
 #![allow(clippy::print_stderr, reason = "figures for the log")]
 
-use evenfall_browser_tests::{Browser, Site, dist};
+use evenfall_browser_tests::{Browser, dist, page};
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::exchange::link;
 use evenfall_engine::{quantity, solve};
@@ -42,7 +42,7 @@ fn same_digits(browser: &Browser, solved: &Solved) {
 
 #[test]
 fn a_brief_is_answered_as_the_engine_answers_it() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("brief");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -68,7 +68,7 @@ fn a_brief_is_answered_as_the_engine_answers_it() {
 
 #[test]
 fn a_changed_load_fails_its_verdict_and_a_link_carries_the_digits() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("load");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -101,7 +101,7 @@ fn a_changed_load_fails_its_verdict_and_a_link_carries_the_digits() {
 
 #[test]
 fn damaged_storage_and_broken_links_lose_nothing() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("storage");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -123,7 +123,7 @@ fn damaged_storage_and_broken_links_lose_nothing() {
 
 #[test]
 fn the_page_works_without_a_network_after_the_first_visit() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("offline");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -159,7 +159,7 @@ fn the_whole_page_is_sent_in_300_kilobytes() {
 
 #[test]
 fn every_starting_design_opens_without_a_fault() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("starts");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -184,7 +184,7 @@ fn every_starting_design_opens_without_a_fault() {
 
 #[test]
 fn the_keyboard_steps_values_and_reads_the_scope() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("keys");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -205,7 +205,7 @@ fn the_keyboard_steps_values_and_reads_the_scope() {
 
 #[test]
 fn blocked_storage_is_said_and_stops_nothing() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start_without_storage("blocked");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -225,7 +225,7 @@ fn blocked_storage_is_said_and_stops_nothing() {
 
 #[test]
 fn a_deleted_design_comes_back() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("undo");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -247,7 +247,7 @@ fn a_deleted_design_comes_back() {
 #[test]
 fn the_engine_runs_in_the_browser_and_its_speed_is_logged() {
     const ROUNDS: u32 = 2000;
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("speed");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -272,7 +272,7 @@ fn the_engine_runs_in_the_browser_and_its_speed_is_logged() {
 
 #[test]
 fn saving_replaces_only_what_this_tab_knows() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("save");
     browser.open(&site.address);
     browser.wait("the page", READY);
@@ -293,7 +293,7 @@ fn saving_replaces_only_what_this_tab_knows() {
 
 #[test]
 fn wrong_text_is_forgotten_when_another_design_is_opened() {
-    let site = Site::start();
+    let site = page();
     let browser = Browser::start("stale");
     browser.open(&site.address);
     browser.wait("the page", READY);

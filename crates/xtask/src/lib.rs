@@ -1,0 +1,3 @@
+//! What the commands share with the browser tests.
+
+pub mod site;
