@@ -32,7 +32,7 @@ def make(number):
     q = dice.uniform(2.2, 15.0)
     elastance = max(q - dice.uniform(0.65, 1.65), 0.2)
     load = r * log(0.4, 2.5)
-    return {
+    design = {
         "evenfall": 1,
         "brief": {"carrier_hz": f, "supply_v": v, "load": {"r_ohm": load}},
         "device": {
@@ -48,6 +48,10 @@ def make(number):
             "drain_load": {"r_ohm": load, "x_ohm": 0.0},
         },
     }
+    # Every second stage's switch current takes a while to fall at turn-off.
+    if number % 2 == 1:
+        design["device"]["fall_time_s"] = dice.uniform(0.02, 0.5) / w
+    return design
 
 
 class Stage:
@@ -65,23 +69,23 @@ class Stage:
         self.l2, self.r2 = w * fit["series_coil"]["l_h"] / z, fit["series_coil"]["esr_ohm"] / z
         self.c2, self.rc2 = w * fit["series_capacitor"]["c_f"] * z, fit["series_capacitor"]["esr_ohm"] / z
         self.ron = dev["on_resistance_ohm"] / z
+        self.fall = w * dev.get("fall_time_s", 0.0)
         self.vf, self.rd = dev["diode"]["forward_v"] / self.v, dev["diode"]["slope_ohm"] / z
 
-    def drain(self, x, on, diode):
-        """Drain voltage and diode current from the drain node's current sum."""
-        net = x[1] - x[3]
+    def drain(self, x, on, diode, tail=0.0):
+        """Drain voltage from the drain node's current sum; `tail` is the current that a
+        switch still carries while it opens."""
+        net = x[1] - x[3] - tail
         g = (1 / self.ron if on else 0.0) + (1 / self.rd if diode else 0.0)
         bias = -self.vf / self.rd if diode else 0.0
         if self.rc1 > 0:
-            g += 1 / self.rc1
-            vd = (net + x[0] / self.rc1 + bias) / g
-        else:
-            vd = x[0]
-        return vd
+            return (net + x[0] / self.rc1 + bias) / (g + 1 / self.rc1)
+        return x[0]
 
-    def rhs(self, t, x, on, diode):
-        vd = self.drain(x, on, diode)
-        i_sw = vd / self.ron if on else 0.0
+    def rhs(self, t, x, on, diode, tail):
+        falling = tail(t)
+        vd = self.drain(x, on, diode, falling)
+        i_sw = vd / self.ron if on else falling
         i_d = (vd + self.vf) / self.rd if diode else 0.0
         ic = x[1] - x[3] - i_sw - i_d
         i2 = x[3]
@@ -106,34 +110,38 @@ class Stage:
     def period(self, x0, record=None):
         """One period from x0; with a record also the integrals and the drain's extremes."""
         x = np.array(x0) if record is None else np.concatenate([x0, np.zeros(11)])
-        diode = False
-        end_off = 2 * math.pi
-        for on, t0, t1 in ((True, 0.0, 2 * math.pi * self.duty), (False, 2 * math.pi * self.duty, end_off)):
-            t = t0
-            diode = self.drain(x, on, False) < -self.vf
-            while t < t1 - 1e-13:
-                def guard(t, y, on=on, diode=diode):
-                    vd = self.drain(y, on, diode)
-                    return -(vd + self.vf) if diode else vd + self.vf
-                guard.terminal, guard.direction = True, -1
-                def slope(t, y, on=on, diode=diode):
-                    d = np.array(self.rhs(t, y, on, diode))
-                    h = 1e-6
-                    return self.drain(y + h * d, on, diode) - self.drain(y - h * d, on, diode)
-                slope.terminal = False
-                t, x, stopped = self.leg(t, t1, x, on, diode, guard, slope, record)
-                if stopped:
-                    diode = not diode
-        return x
+        none = lambda t: 0.0
+        opens = 2 * math.pi * self.duty
+        x = self.stretch(0.0, opens, x, True, none, record)
+        if self.fall > 0:
+            at_opening = self.drain(x, True, self.drain(x, True, False) < -self.vf) / self.ron
+            tail = lambda t: at_opening * (1 - (t - opens) / self.fall)
+            x = self.stretch(opens, opens + self.fall, x, False, tail, record)
+        return self.stretch(opens + self.fall, 2 * math.pi, x, False, none, record)
 
-    def leg(self, t, t1, x, on, diode, guard, slope, record):
-        f = lambda tt, y: self.rhs(tt, y.tolist(), on, diode)
-        events = [guard] if record is None else [guard, slope]
-        s = solve_ivp(f, (t, t1), x, method="DOP853", rtol=RTOL, atol=ATOL, events=events)
-        if record is not None:
-            record.append((t, s.t[-1], [self.drain(y, on, diode) for y in (s.y[:, 0], s.y[:, -1])]
-                           + [self.drain(y, on, diode) for y in s.y_events[1]], diode))
-        return s.t[-1], s.y[:, -1], s.status == 1
+    def stretch(self, t, end, x, on, tail, record):
+        diode = self.drain(x, on, False, tail(t)) < -self.vf
+        while t < end - 1e-13:
+            def guard(t, y, diode=diode):
+                vd = self.drain(y, on, diode, tail(t))
+                return -(vd + self.vf) if diode else vd + self.vf
+            guard.terminal, guard.direction = True, -1
+
+            def slope(t, y, diode=diode):
+                d = np.array(self.rhs(t, y.tolist(), on, diode, tail))
+                h = 1e-6
+                return self.drain(y + h * d, on, diode, tail(t + h)) - self.drain(y - h * d, on, diode, tail(t - h))
+            slope.terminal = False
+            f = lambda t, y, diode=diode: self.rhs(t, y.tolist(), on, diode, tail)
+            events = [guard] if record is None else [guard, slope]
+            s = solve_ivp(f, (t, end), x, method="DOP853", rtol=RTOL, atol=ATOL, events=events)
+            if record is not None:
+                seen = list(zip((s.t[0], s.t[-1]), (s.y[:, 0], s.y[:, -1]))) + list(zip(s.t_events[1], s.y_events[1]))
+                record.append(([self.drain(y, on, diode, tail(t)) for t, y in seen], diode))
+            t, x = s.t[-1], s.y[:, -1]
+            if s.status == 1:
+                diode = not diode
+        return x
 
 
 def solve(d):
@@ -163,15 +171,15 @@ def solve(d):
     watt = v * v / r
     amp = [2 * math.hypot(q[2 + 2 * k], q[3 + 2 * k]) for k in range(4)]
     supply, total, loss = q[0], q[1], q[10]
-    drains = [value for leg in record for value in leg[2]]
+    drains = [value for leg in record for value in leg[0]]
     return {
         "supply_power_w": supply * watt,
         "output_power_w": 0.5 * amp[0] ** 2 * watt,
         "total_output_power_w": total * watt,
         "drain_peak_v": max(drains) * v,
-        "turn_on_v": record[-1][2][1] * v,
+        "turn_on_v": record[-1][0][1] * v,
         "harmonics_dbc": [20 * math.log10(a / amp[0]) for a in amp[1:]],
-        "diode_intervals": sum(1 for leg in record if leg[3]),
+        "diode_intervals": sum(1 for leg in record if leg[1]),
     }, left, abs(supply - total - loss) / supply
 
 

@@ -101,6 +101,7 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
                         get=|d| d.device.diode.map(|x| x.slope_ohm)
                         set=|d, v| if let (Some(x), Some(v)) = (&mut d.device.diode, v) { x.slope_ohm = v }/>
                 </Show>
+                <Field app name="fall_time" label="Turn-off fall time (empty: none)" unit="s" optional=true hint="Time in which the switch current falls to zero in a straight line." get=|d| d.device.fall_time_s set=|d, v| d.device.fall_time_s = v/>
                 <Field app name="rating_v" label="Drain rating" unit="V" optional=true get=|d| d.device.rating_v set=|d, v| d.device.rating_v = v/>
                 <Field app name="rating_a" label="Switch current rating" unit="A" optional=true get=|d| d.device.rating_a set=|d, v| d.device.rating_a = v/>
             </div>

@@ -35,6 +35,7 @@ fn generator() -> Design {
         rating_v: Some(220.0),
         rating_a: Some(15.0),
         on_resistance_per_k: Some(0.007),
+        fall_time_s: Some(2e-9),
         junction_to_ambient_k_per_w: Some(20.0),
         gate_charge_c: Some(12e-9),
         gate_drive_v: Some(10.0),

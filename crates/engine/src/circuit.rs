@@ -39,6 +39,14 @@ pub enum Element {
         /// On-resistance, ohms.
         ohm: f64,
     },
+    /// What a switch beside it still carries while it opens: its current at that instant,
+    /// falling to zero in a straight line.
+    Fall {
+        /// Branch number of the switch.
+        of: usize,
+        /// Time to zero, seconds.
+        second: f64,
+    },
     /// A diode whose cathode is the first node: it conducts when the branch voltage is
     /// below `-forward_v`, and then the voltage is `-forward_v - ohm * forward current`.
     Diode {
@@ -52,7 +60,10 @@ pub enum Element {
 impl Element {
     /// Whether the element conducts only some of the time.
     pub fn is_switching(&self) -> bool {
-        matches!(self, Self::Switch { .. } | Self::Diode { .. })
+        matches!(
+            self,
+            Self::Switch { .. } | Self::Fall { .. } | Self::Diode { .. }
+        )
     }
 }
 
@@ -113,6 +124,19 @@ impl Circuit {
             pick(|e| matches!(e, Element::Capacitor { .. })),
             pick(|e| matches!(e, Element::Inductor { .. })),
         )
+    }
+
+    /// Numbers of the branches with a falling current; each has two states after those of the
+    /// capacitors and coils, the current and its slope.
+    pub fn falls(&self) -> impl Iterator<Item = usize> + '_ {
+        (0..self.branches.len())
+            .filter(|&k| matches!(self.branches[k].element, Element::Fall { .. }))
+    }
+
+    /// Number of states.
+    pub fn state_count(&self) -> usize {
+        let (capacitors, inductors) = self.state_branches();
+        capacitors.len() + inductors.len() + 2 * self.falls().count()
     }
 
     /// Numbers of the branches that switch: bit k of a conduction set is entry k.

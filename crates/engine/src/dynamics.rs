@@ -69,6 +69,8 @@ pub struct Mode {
     pub slopes: Rows,
     /// Row k: state k projected onto what this mode allows; none where it allows all.
     pub project: Option<Rows>,
+    /// Row k: state k as it is when the clock enters this mode; none where nothing changes.
+    pub latch: Option<Rows>,
     /// Row k: voltage of branch k.
     pub voltage: Rows,
     /// Row k: current of branch k.
@@ -81,6 +83,7 @@ enum Kind {
     Capacitor,
     Resistor,
     Inductor,
+    Fall,
 }
 
 /// A two-terminal part with one law; a branch is one or two of them in series.
@@ -101,12 +104,45 @@ struct Part {
 pub fn mode(circuit: &Circuit, conducting: u32) -> Result<Mode, DynamicsError> {
     let parts = parts(circuit, conducting)?;
     let tree = Tree::grow(circuit, &parts)?;
-    Equations {
+    let mut mode = Equations {
         circuit,
         parts: &parts,
         tree: &tree,
     }
-    .mode()
+    .mode()?;
+    mode.latch = latch(circuit, conducting)?;
+    Ok(mode)
+}
+
+/// What the falling currents start from when the clock enters a mode: the current that their
+/// switch carried while closed, or nothing.
+fn latch(circuit: &Circuit, conducting: u32) -> Result<Option<Rows>, DynamicsError> {
+    let states = circuit.state_count();
+    let falls = circuit.falls().count();
+    if falls == 0 {
+        return Ok(None);
+    }
+    let mut latch = Rows::zeros(states, states + 1);
+    let first = states - 2 * falls;
+    (0..first).for_each(|k| latch.row_mut(k)[k] = 1.0);
+    let switching = circuit.switching_branches();
+    let bit = |branch: usize| {
+        switching
+            .iter()
+            .position(|&b| b == branch)
+            .map_or(0, |k| 1 << k)
+    };
+    for (k, branch) in circuit.falls().enumerate() {
+        let Element::Fall { of, second } = circuit.branches[branch].element else {
+            continue;
+        };
+        if conducting & bit(branch) != 0 && bit(of) != 0 {
+            let closed = mode(circuit, conducting & !bit(branch) | bit(of))?;
+            latch.add(first + 2 * k, closed.current.row(of), 1.0);
+            latch.add(first + 2 * k + 1, closed.current.row(of), -1.0 / second);
+        }
+    }
+    Ok(Some(latch))
 }
 
 fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError> {
@@ -144,6 +180,9 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
             ),
             Element::Source { volt } => (Some(Kind::Source), check(volt, f64::MIN)?, 0.0),
             Element::Switch { ohm } => (None, 0.0, check(ohm, 0.0)?),
+            Element::Fall { second, .. } => {
+                (Some(Kind::Fall), check(second, f64::MIN_POSITIVE)?, 0.0)
+            }
             Element::Diode { forward_v, ohm } => (
                 Some(Kind::Source),
                 -check(forward_v, 0.0)?,

@@ -160,8 +160,7 @@ pub const MOST_STATES: usize = 32;
 /// # Errors
 /// See [`OrbitError`].
 pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, OrbitError> {
-    let (capacitors, inductors) = circuit.state_branches();
-    let states = capacitors.len() + inductors.len();
+    let states = circuit.state_count();
     macro_rules! sized {
         ($($n:literal),*) => {
             match states + 1 {

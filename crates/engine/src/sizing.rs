@@ -168,7 +168,7 @@ impl fmt::Display for SizingError {
             ),
             Self::NoSolution { residual } => write!(
                 f,
-                "no soft-switching stage was found: voltage or slope at turn-on stayed at {:.2} % of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back",
+                "no soft-switching stage was found: voltage or slope at turn-on stayed at {:.2e} % of the supply; a duty nearer 0.5, a higher loaded Q or lower losses bring it back",
                 100.0 * residual
             ),
             Self::Stage(error) => error.fmt(f),

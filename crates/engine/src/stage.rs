@@ -28,6 +28,8 @@ pub struct Stage {
     pub supply_v: f64,
     /// On-resistance, ohms; 0 is ideal.
     pub on_resistance_ohm: f64,
+    /// Time in which the switch current falls to zero at turn-off, seconds; 0 for at once.
+    pub fall_s: f64,
     /// Constant output capacitance of the device, farads; 0 for none.
     pub device_f: f64,
     /// Body diode.
@@ -95,6 +97,7 @@ pub struct Layout {
     supply: usize,
     feed: usize,
     switch: usize,
+    fall: Option<usize>,
     diode: Option<usize>,
     device: Option<usize>,
     shunt: Option<usize>,
@@ -113,6 +116,7 @@ impl Stage {
             duty: 0.5,
             supply_v: 12.0,
             on_resistance_ohm: 0.1,
+            fall_s: 0.0,
             device_f: 0.0,
             diode: None,
             feed: part(5e-6, 0.1),
@@ -166,6 +170,13 @@ impl Stage {
             };
             c.add("body diode", drain, ground, element)
         });
+        let fall = (self.fall_s > 0.0).then(|| {
+            let element = Element::Fall {
+                of: switch,
+                second: self.fall_s,
+            };
+            c.add("falling switch current", drain, ground, element)
+        });
         let device = (self.device_f > 0.0).then(|| {
             let element = Element::Capacitor {
                 farad: self.device_f,
@@ -216,6 +227,7 @@ impl Stage {
             supply: source,
             feed,
             switch,
+            fall,
             diode,
             device,
             shunt,
@@ -228,15 +240,30 @@ impl Stage {
 
     fn solve_layout(&self, layout: &Layout) -> Result<Box<dyn Orbit>, OrbitError> {
         let period = 1.0 / self.carrier_hz;
-        let on = ClockStep {
-            duration_s: self.duty * period,
-            closed: 1,
+        let bit = |branch: usize| {
+            let switching = layout.circuit.switching_branches();
+            switching
+                .iter()
+                .position(|&b| b == branch)
+                .map_or(0, |k| 1 << k)
         };
+        let on_s = self.duty * period;
+        let on = ClockStep {
+            duration_s: on_s,
+            closed: bit(layout.switch),
+        };
+        let falling = layout.fall.map(|fall| ClockStep {
+            duration_s: self.fall_s,
+            closed: bit(fall),
+        });
         let off = ClockStep {
-            duration_s: (1.0 - self.duty) * period,
+            duration_s: period - on_s - falling.map_or(0.0, |f| f.duration_s),
             closed: 0,
         };
-        orbit::solve(&layout.circuit, &[on, off])
+        match falling {
+            Some(falling) => orbit::solve(&layout.circuit, &[on, falling, off]),
+            None => orbit::solve(&layout.circuit, &[on, off]),
+        }
     }
 
     /// Only what soft switching asks: drain voltage (volts) and slope (volts per second) just
@@ -372,7 +399,7 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Re
     let losses = Losses {
         switch_w: absorbed(layout.switch) - discharged.in_switch_w,
         turn_on_w: discharged.total_w,
-        turn_off_w: 0.0,
+        turn_off_w: layout.fall.map_or(0.0, absorbed),
         diode_w: layout.diode.map_or(0.0, absorbed),
         feed_coil_w: ohmic(layout.feed, stage.feed.esr_ohm),
         shunt_capacitor_w: layout.shunt.map_or(0.0, |b| ohmic(b, stage.shunt.esr_ohm))
@@ -392,7 +419,9 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Re
         drain_peak_v: drain_range.greatest,
         drain_least_v: drain_range.least,
         switch_peak_a: orbit.extremes(switch).greatest,
-        switch_rms_a: square(switch).max(0.0).sqrt(),
+        switch_rms_a: (square(switch) + layout.fall.map_or(0.0, |b| square(Probe::Current(b))))
+            .max(0.0)
+            .sqrt(),
         turn_on_v,
         turn_on_slope_v_per_s,
         loaded_q: omega * stage.series_coil.value / stage.load.r_ohm,
@@ -481,8 +510,13 @@ fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
         .flatten()
         .map(Probe::Voltage);
     let (capacitors, load): (Vec<_>, Vec<_>) = (capacitors.collect(), load.collect());
-    let mut probes = vec![Probe::Voltage(layout.switch), Probe::Current(layout.switch)];
-    probes.extend(capacitors.iter().chain(&load));
+    let switch = [Some(layout.switch), layout.fall]
+        .into_iter()
+        .flatten()
+        .map(Probe::Current);
+    let switch: Vec<_> = switch.collect();
+    let mut probes = vec![Probe::Voltage(layout.switch)];
+    probes.extend(switch.iter().chain(&capacitors).chain(&load));
     let curves = orbit.samples(&probes, SAMPLES);
     let sum = |range: Range<usize>| {
         let mut total = vec![0.0; SAMPLES + 1];
@@ -494,13 +528,14 @@ fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
         }
         total
     };
-    let load_from = 2 + capacitors.len();
+    let capacitors_from = 1 + switch.len();
+    let load_from = capacitors_from + capacitors.len();
     let step = orbit.period_s() / SAMPLES as f64;
     Waveforms {
         t_s: (0..=SAMPLES).map(|k| k as f64 * step).collect(),
         drain_v: sum(0..1),
-        switch_a: sum(1..2),
-        capacitor_a: sum(2..load_from),
+        switch_a: sum(1..capacitors_from),
+        capacitor_a: sum(capacitors_from..load_from),
         load_v: sum(load_from..probes.len()),
     }
 }

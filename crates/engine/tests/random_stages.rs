@@ -37,6 +37,7 @@ fn stage(dice: &mut Dice) -> Stage {
         duty: dice.between(0.38, 0.58),
         supply_v,
         on_resistance_ohm: r * dice.scattered(0.003, 0.1),
+        fall_s: 0.0,
         device_f: 0.0,
         diode: Some(Diode {
             forward_v: dice.between(0.4, 1.0),
@@ -102,6 +103,7 @@ fn frequency_impedance_and_voltage_only_scale() {
             duty: a.duty,
             supply_v: a.supply_v * v,
             on_resistance_ohm: a.on_resistance_ohm * z,
+            fall_s: a.fall_s / f,
             device_f: 0.0,
             diode: a.diode.map(|d| Diode {
                 forward_v: d.forward_v * v,

@@ -24,6 +24,7 @@ pub(super) struct Places {
     pub(super) link_c: Range<usize>,
     pub(super) link_r: Range<usize>,
     pub(super) link_l: Range<usize>,
+    pub(super) link_fall: Range<usize>,
 }
 
 impl Equations<'_> {
@@ -43,6 +44,7 @@ impl Equations<'_> {
             link_c: in_links(Kind::Capacitor),
             link_r: in_links(Kind::Resistor),
             link_l: in_links(Kind::Inductor),
+            link_fall: in_links(Kind::Fall),
         }
     }
 
@@ -63,12 +65,16 @@ impl Equations<'_> {
     pub(super) fn mode(&self) -> Result<Mode, DynamicsError> {
         let places = self.places();
         let (capacitors, inductors) = self.circuit.state_branches();
-        let states = capacitors.len() + inductors.len();
+        let states = self.circuit.state_count();
         let width = states + 1;
         // State number of each branch that has one.
         let mut state_of: List<usize> = smallvec::smallvec![states; self.circuit.branches.len()];
         for (state, &branch) in capacitors.iter().chain(&inductors).enumerate() {
             state_of[branch] = state;
+        }
+        let first_fall = capacitors.len() + inductors.len();
+        for (k, branch) in self.circuit.falls().enumerate() {
+            state_of[branch] = first_fall + 2 * k;
         }
         let mut tree_v = Rows::zeros(self.tree.tree.len(), width);
         let mut link_i = Rows::zeros(self.tree.links.len(), width);
@@ -78,6 +84,17 @@ impl Equations<'_> {
         let mass_c = self.free_voltages(&places, &state_of, &mut tree_v)?;
         let flux = Flux::of(self, &places, &state_of, capacitors.len());
         flux.free_currents(self, &places, &state_of, &mut link_i)?;
+        for l in places.link_fall.clone() {
+            // Beside coils alone the current would have to jump.
+            if self.tree.links[l]
+                .1
+                .iter()
+                .any(|(t, _)| places.tree_l.contains(t))
+            {
+                return Err(self.singular(self.link_part(l)));
+            }
+            link_i.row_mut(l)[state_of[self.link_part(l).branch]] = 1.0;
+        }
         self.resistors(&places, &mut tree_v, &mut link_i)?;
 
         // Slopes of the free states, then of all.
@@ -85,7 +102,7 @@ impl Equations<'_> {
         let mut project = (!places.link_c.is_empty() || !places.tree_l.is_empty())
             .then(|| Rows::zeros(states, width));
         let mut drive = Rows::zeros(places.tree_c.len(), width);
-        for l in places.link_r.start..places.link_l.end {
+        for l in places.link_r.start..places.link_fall.end {
             for &(t, sign) in self.tree.links[l]
                 .1
                 .iter()
@@ -133,6 +150,10 @@ impl Equations<'_> {
             link_i.row_mut(l).copy_from_slice(&row);
         }
         flux.slopes(self, &places, &state_of, &tree_v, &mut slopes)?;
+        for l in places.link_fall.clone() {
+            let state = state_of[self.link_part(l).branch];
+            slopes.row_mut(state)[state + 1] = 1.0;
+        }
         for t in places.tree_l.clone() {
             let state = state_of[self.tree_part(t).branch];
             for (other, henry) in flux.row(state) {
@@ -140,6 +161,7 @@ impl Equations<'_> {
             }
         }
         if let Some(project) = &mut project {
+            (first_fall..states).for_each(|state| project.row_mut(state)[state] = 1.0);
             for l in places.link_l.clone() {
                 let state = state_of[self.link_part(l).branch];
                 project.row_mut(state).copy_from_slice(link_i.row(l));
@@ -158,6 +180,7 @@ impl Equations<'_> {
         Ok(Mode {
             slopes,
             project,
+            latch: None,
             voltage,
             current,
         })
@@ -219,7 +242,7 @@ impl Equations<'_> {
         tree_v: &mut Rows,
         link_i: &mut Rows,
     ) -> Result<(), DynamicsError> {
-        for l in places.link_l.clone() {
+        for l in places.link_l.start..places.link_fall.end {
             for &(t, sign) in self.tree.links[l]
                 .1
                 .iter()

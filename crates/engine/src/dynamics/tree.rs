@@ -31,6 +31,7 @@ impl Tree {
             Kind::Capacitor,
             Kind::Resistor,
             Kind::Inductor,
+            Kind::Fall,
         ] {
             for (k, part) in parts
                 .iter()
@@ -40,6 +41,11 @@ impl Tree {
                 let (a, b) = (group[part.from], group[part.to]);
                 if a == b {
                     outside.push(k);
+                } else if kind == Kind::Fall {
+                    // A current with no way back.
+                    return Err(DynamicsError::Singular {
+                        element: circuit.branches[part.branch].name,
+                    });
                 } else {
                     group.iter_mut().filter(|g| **g == b).for_each(|g| *g = a);
                     tree.push(k);

@@ -16,7 +16,7 @@ const SETTLED: f64 = 1e-13;
 /// What is accepted when rounding keeps Newton from settling fully. A very stiff choke
 /// amplifies rounding in the state, so after `PATIENCE` iterations the change over a period
 /// alone decides; the power balance is checked in any case.
-const ACCEPTED: f64 = 1e-11;
+const ACCEPTED: f64 = 1e-9;
 const PATIENCE: usize = 6;
 /// Rounding of a guard, relative to its largest term.
 const GUARD_ROUNDING: f64 = 1e-12;
@@ -26,6 +26,7 @@ pub(super) struct SizedMode<const N: usize> {
     pub(super) conducting: u32,
     pub(super) a: Square<N>,
     pub(super) project: Option<Square<N>>,
+    pub(super) latch: Option<Square<N>>,
     pub(super) voltage: Vec<State<N>>,
     pub(super) current: Vec<State<N>>,
 }
@@ -211,6 +212,7 @@ impl<const N: usize> Solver<'_, N> {
             conducting,
             a: square(&mode.slopes, -1.0 / self.period_s, 0.0),
             project: mode.project.as_ref().map(|p| square(p, 1.0, 1.0)),
+            latch: mode.latch.as_ref().map(|l| square(l, 1.0, 1.0)),
             voltage: rows(&mode.voltage),
             current: rows(&mode.current),
         });
@@ -264,6 +266,11 @@ impl<const N: usize> Solver<'_, N> {
         let mut start_s = 0.0;
         for step in self.clock {
             let mut left = step.duration_s;
+            let entered = self.mode(step.closed | lap.conducting)?;
+            if let Some(latch) = &self.modes[entered].latch {
+                lap.end = latch * lap.end;
+                lap.derivative = latch * lap.derivative;
+            }
             let mut settled = !with_diodes;
             let mut events = 0;
             loop {

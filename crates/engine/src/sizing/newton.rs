@@ -126,6 +126,7 @@ impl Search<'_> {
                     (Some(up), Some(down)) => (up - down) / (2.0 * PROBE_STEP),
                     (Some(up), None) => (up - &here) / PROBE_STEP,
                     (None, Some(down)) => (&here - down) / PROBE_STEP,
+                    (None, None) if residual < ROUNDING => return Ok(point),
                     (None, None) => return Err(stuck),
                 };
                 jacobian.set_column(column, &difference);

@@ -19,6 +19,7 @@ pub(super) struct Problem {
     pub(super) coil_q: Option<f64>,
     pub(super) capacitor_q: Option<f64>,
     pub(super) on_resistance_ohm: f64,
+    pub(super) fall_s: f64,
     pub(super) device_f: f64,
     pub(super) diode: Option<Diode>,
     pub(super) drain_limit_v: Option<f64>,
@@ -136,12 +137,6 @@ impl Problem {
                 ));
             }
         };
-        if device.fall_time_s.is_some_and(|t| t != 0.0) {
-            notes.push(
-                "The turn-off fall time is not counted yet: the switch is taken to open at once."
-                    .into(),
-            );
-        }
         let thermal = match device.junction_to_ambient_k_per_w {
             None => {
                 if device.on_resistance_per_k.is_some_and(|t| t != 0.0) {
@@ -237,6 +232,11 @@ impl Problem {
                 "the on-resistance",
                 device.on_resistance_ohm,
             )?,
+            fall_s: not_negative(
+                "device.fall_time_s",
+                "the fall time",
+                device.fall_time_s.unwrap_or(0.0),
+            )?,
             device_f,
             diode,
             drain_limit_v: device
@@ -246,9 +246,24 @@ impl Problem {
             pins,
             notes,
         };
+        problem.check_fall()?;
         problem.check_pins()?;
         problem.settle_load(brief.load)?;
         Ok(problem)
+    }
+
+    fn check_fall(&self) -> Result<(), SizingError> {
+        let off_s = (1.0 - self.duty) / self.carrier_hz;
+        if self.fall_s < off_s {
+            return Ok(());
+        }
+        Err(field(
+            "device.fall_time_s",
+            format!(
+                "the fall time of {} s does not fit into the {off_s:.3e} s that the switch is open",
+                self.fall_s
+            ),
+        ))
     }
 
     fn check_pins(&self) -> Result<(), SizingError> {
@@ -406,6 +421,7 @@ impl Problem {
             duty: self.duty,
             supply_v: point.supply_v,
             on_resistance_ohm: self.on_resistance_ohm * way.losses,
+            fall_s: self.fall_s * way.losses,
             device_f: if shunt_f > 0.0 {
                 self.device_f
             } else {
