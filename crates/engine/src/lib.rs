@@ -17,5 +17,6 @@ pub mod orbit;
 pub mod quantity;
 pub mod sizing;
 pub mod stage;
+pub mod study;
 
 pub use sizing::solve;

@@ -15,6 +15,7 @@ mod thermal;
 mod verdict;
 
 pub use ideal::{Ideal, ideal};
+pub use verdict::judge;
 
 use crate::answer::{Answer, Refusal, Solved, Waveforms};
 use crate::design::{Aim, Design};
@@ -182,7 +183,7 @@ impl std::error::Error for SizingError {}
 pub fn solve(design: &Design) -> Answer {
     match sized(design) {
         Ok((stage, reading, waveforms, notes)) => {
-            let verdicts = verdict::judge(design, &stage, &reading);
+            let verdicts = judge(design, &stage, &reading);
             Answer::Solved(Solved {
                 values: stage.values(),
                 figures: reading.figures,
@@ -222,11 +223,25 @@ fn drive(design: &Design) -> Result<Option<f64>, SizingError> {
     }
 }
 
-/// The stage of a design, its reading, and what the person should know about it.
+/// The stage of a design with its reading.
+///
+/// # Errors
+/// See [`SizingError`].
+pub fn sized_stage(design: &Design) -> Result<(Stage, Reading), SizingError> {
+    settled(design).map(|(stage, reading, _)| (stage, reading))
+}
+
+/// The stage of a design, its reading, its curves, and what the person should know about it.
 ///
 /// # Errors
 /// See [`SizingError`].
 pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>), SizingError> {
+    let (stage, reading, notes) = settled(design)?;
+    let waveforms = stage.waveforms().map_err(SizingError::Stage)?;
+    Ok((stage, reading, waveforms, notes))
+}
+
+fn settled(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError> {
     let problem = Problem::of(design)?;
     let trial = |problem: &Problem| {
         let mut notes = problem.notes.clone();
@@ -239,12 +254,11 @@ pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>)
     };
     let ((stage, mut reading, notes), junction_c) =
         thermal::settle(&problem, trial, |(_, r, _)| r.losses)?;
-    let waveforms = stage.waveforms().map_err(SizingError::Stage)?;
     let figures = &mut reading.figures;
     figures.junction_c = junction_c;
     figures.gate_drive_w = drive(design)?;
     figures.power_added_efficiency = figures
         .gate_drive_w
         .map(|drive| (figures.output_power_w - drive) / figures.supply_power_w);
-    Ok((stage, reading, waveforms, notes))
+    Ok((stage, reading, notes))
 }

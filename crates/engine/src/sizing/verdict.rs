@@ -11,7 +11,7 @@ const SOFT_FRACTION: f64 = 0.1;
 const POWER_FRACTION: f64 = 0.05;
 
 /// Every verdict that the design has a bound for.
-pub(super) fn judge(design: &Design, stage: &Stage, reading: &Reading) -> Vec<Verdict> {
+pub fn judge(design: &Design, stage: &Stage, reading: &Reading) -> Vec<Verdict> {
     let (limits, figures) = (&design.brief.limits, &reading.figures);
     let mut verdicts = Vec::new();
     let mut add = |limit: &str, value: f64, bound: f64, met: bool, unit, help: String| {
