@@ -4,7 +4,7 @@ use crate::state::App;
 use evenfall_engine::quantity;
 use leptos::prelude::*;
 
-fn per_cent(share: f64) -> String {
+pub(crate) fn per_cent(share: f64) -> String {
     format!("{:.2} %", 100.0 * share)
 }
 

@@ -14,6 +14,7 @@ mod schematic;
 mod scope;
 mod shelf;
 mod state;
+mod studies;
 mod timing;
 
 use leptos::prelude::*;
@@ -45,6 +46,7 @@ fn Page() -> impl IntoView {
                 <figures::Spectrum app/>
                 <figures::Watts app/>
                 <figures::Figures app/>
+                <studies::Studies app/>
                 <shelf::Shelf app/>
             </section>
         </main>

@@ -9,14 +9,12 @@
 #![forbid(unsafe_code)]
 
 pub mod answer;
-pub mod circuit;
 pub mod design;
-pub mod dynamics;
 pub mod exchange;
-pub mod orbit;
 pub mod quantity;
 pub mod sizing;
 pub mod stage;
 pub mod study;
 
+pub use evenfall_solver::{circuit, dynamics, orbit};
 pub use sizing::solve;

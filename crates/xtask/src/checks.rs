@@ -42,6 +42,8 @@ fn lint_wasm() -> Outcome {
         "--target",
         "wasm32-unknown-unknown",
         "-p",
+        "evenfall-solver",
+        "-p",
         "evenfall-engine",
         "-p",
         "evenfall-app",

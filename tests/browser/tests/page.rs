@@ -324,3 +324,30 @@ fn wrong_text_is_forgotten_when_another_design_is_opened() {
         "24 V"
     );
 }
+
+#[test]
+fn a_loaded_q_study_is_drawn_and_its_best_point_taken_over() {
+    let site = page();
+    let browser = Browser::start("study");
+    browser.open(&site.address);
+    browser.wait("the page", READY);
+    browser.press("studies");
+    browser.wait("the study", "return document.querySelector('[data-test=study-verdict]').textContent.startsWith('Every limit is met')");
+    assert_eq!(
+        browser.script("return document.querySelectorAll('.study path').length"),
+        5
+    );
+    browser.press("study-take");
+    let solved = native(&browser);
+    assert!(
+        solved.figures.loaded_q > 5.0 && solved.figures.loaded_q < 7.0,
+        "{}",
+        solved.figures.loaded_q
+    );
+    assert!(solved.verdicts.iter().all(|v| v.met));
+    same_digits(&browser, &solved);
+    // A load study of the parts as they are.
+    browser.script("const s = document.querySelector('[data-test=study-kind]'); s.value = '2'; s.dispatchEvent(new Event('change', {bubbles: true}))");
+    browser.wait("the load study", "return [...document.querySelectorAll('.study + p')].some(p => p.textContent.includes('Ω'))");
+    assert_eq!(browser.console_errors(), Vec::<String>::new());
+}

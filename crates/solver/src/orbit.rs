@@ -169,5 +169,5 @@ pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, O
             }
         };
     }
-    sized!(5, 7, 33)
+    sized!(5, 8, 33)
 }

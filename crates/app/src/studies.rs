@@ -1,0 +1,355 @@
+//! Studies: one thing moves, and the stage is drawn against it.
+//!
+//! Rows are made a few milliseconds at a time, so that the page answers meanwhile; the last
+//! picture stays until the new one is whole.
+
+use crate::fields::{Field, Typing};
+use crate::figures::per_cent;
+use crate::state::App;
+use evenfall_engine::design::Design;
+use evenfall_engine::quantity;
+use evenfall_engine::study::{Moves, Point, Row, Study, Window, collision, window};
+use leptos::prelude::*;
+use std::sync::Arc;
+use std::time::Duration;
+
+const POINTS: usize = 61;
+/// Milliseconds of rows between two looks at the page.
+const SLICE_MS: f64 = 7.0;
+/// Milliseconds that the design has to rest before a study starts again.
+const REST_MS: u64 = 250;
+
+/// What can move, with its name, unit, and the range that is offered first.
+const KINDS: [(Moves, &str, &str); 5] = [
+    (Moves::LoadedQ, "loaded Q, sized anew at each point", ""),
+    (Moves::Carrier, "carrier, parts as they are", "Hz"),
+    (Moves::Load, "load, parts as they are", "Ω"),
+    (Moves::Supply, "supply, parts as they are", "V"),
+    (Moves::Duty, "duty, parts as they are", ""),
+];
+
+fn offered(kind: usize, app: App) -> (f64, f64) {
+    let load = app
+        .last
+        .get_untracked()
+        .map_or(50.0, |s| s.values.drain_load.r_ohm);
+    let supply = app.last.get_untracked().map_or(12.0, |s| s.values.supply_v);
+    let carrier = app.design.with_untracked(|d| d.brief.carrier_hz);
+    match KINDS[kind].0 {
+        Moves::LoadedQ => (1.5, 20.0),
+        Moves::Carrier => (0.9 * carrier, 1.1 * carrier),
+        Moves::Load => (load / 3.0, load * 3.0),
+        Moves::Supply => (0.2 * supply, 1.2 * supply),
+        Moves::Duty => (0.3, 0.7),
+    }
+}
+
+/// One strip of the picture.
+struct Strip {
+    label: &'static str,
+    unit: &'static str,
+    value: fn(&Point) -> f64,
+}
+
+const STRIPS: [Strip; 5] = [
+    Strip {
+        label: "Output power",
+        unit: "W",
+        value: |p| p.output_power_w,
+    },
+    Strip {
+        label: "Drain efficiency",
+        unit: "%",
+        value: |p| 100.0 * p.drain_efficiency,
+    },
+    Strip {
+        label: "Drain peak",
+        unit: "V",
+        value: |p| p.drain_peak_v,
+    },
+    Strip {
+        label: "Drain voltage at turn-on",
+        unit: "V",
+        value: |p| p.turn_on_v,
+    },
+    Strip {
+        label: "Strongest harmonic",
+        unit: "dBc",
+        value: |p| {
+            p.harmonics_dbc
+                .iter()
+                .copied()
+                .fold(f64::NEG_INFINITY, f64::max)
+        },
+    },
+];
+
+/// The card; its studies run while it is open.
+#[component]
+pub(crate) fn Studies(app: App) -> impl IntoView {
+    let open = RwSignal::new(false);
+    let kind = RwSignal::new(0usize);
+    let range = RwSignal::new(offered(0, app));
+    let rows: RwSignal<Arc<Vec<Row>>> = RwSignal::new(Arc::new(Vec::new()));
+    let progress: RwSignal<Option<usize>> = RwSignal::new(None);
+    let refused: RwSignal<Option<String>> = RwSignal::new(None);
+    let run = StoredValue::new(0u32);
+    Effect::new(move |_| {
+        if !open.get() {
+            return;
+        }
+        let (design, moves, (from, to)) = (app.design.get(), KINDS[kind.get()].0, range.get());
+        let number = run.get_value() + 1;
+        run.set_value(number);
+        set_timeout(
+            move || {
+                start(
+                    design,
+                    moves,
+                    (from, to),
+                    number,
+                    Run {
+                        run,
+                        rows,
+                        progress,
+                        refused,
+                    },
+                )
+            },
+            Duration::from_millis(REST_MS),
+        );
+    });
+    let choose = move |text: String| {
+        if let Ok(index) = text.parse::<usize>() {
+            rows.set(Arc::new(Vec::new()));
+            kind.set(index);
+            range.set(offered(index, app));
+        }
+    };
+    let unit = move || KINDS[kind.get()].2;
+    let verdict = move || {
+        let rows = rows.get();
+        if rows.is_empty() {
+            return String::new();
+        }
+        match window(&rows) {
+            Some(w) => {
+                let best = rows[w.best].at;
+                format!(
+                    "Every limit is met from {} to {}; the efficiency is highest at {}.",
+                    quantity::format(w.from, unit()),
+                    quantity::format(w.to, unit()),
+                    quantity::format(best, unit())
+                )
+            }
+            None => collision(&rows),
+        }
+    };
+    let best = move || {
+        let rows = rows.get();
+        let found = window(&rows)?;
+        (KINDS[kind.get()].0 == Moves::LoadedQ).then(|| rows[found.best].at)
+    };
+    let take = move |_| {
+        if let Some(q) = best() {
+            let q = quantity::parse(&quantity::format(q, ""), "").unwrap_or(q);
+            app.design.update(|d| d.stage.loaded_q = q);
+        }
+    };
+    view! {
+        <section class="card">
+            <details on:toggle=move |_| open.update(|o| *o = !*o)>
+                <summary data-test="studies"><h2>"Studies"</h2></summary>
+                <div class="grid">
+                    <span class="field">
+                        <label for="study-kind">"Move"</label>
+                        <select id="study-kind" data-test="study-kind" on:change:target=move |e| choose(e.target().value())>
+                            {KINDS.iter().enumerate().map(|(k, (_, name, _))| view! { <option value=k.to_string()>{*name}</option> }).collect_view()}
+                        </select>
+                    </span>
+                    {move || {
+                        kind.track();
+                        view! {
+                            <Edge app range unit=unit() upper=false/>
+                            <Edge app range unit=unit() upper=true/>
+                        }
+                    }}
+                    <Field app name="band_low" label="Band from (for the loaded Q)" unit="Hz" optional=true hint="Power and efficiency at the band's edges are shown beside each loaded Q." get=|d| d.brief.band_hz.map(|b| b[0]) set=|d, v| d.brief.band_hz = v.map(|v| [v, d.brief.band_hz.map_or(v, |b| b[1])])/>
+                    <Field app name="band_high" label="Band to" unit="Hz" optional=true get=|d| d.brief.band_hz.map(|b| b[1]) set=|d, v| d.brief.band_hz = v.map(|v| [d.brief.band_hz.map_or(v, |b| b[0]), v])/>
+                </div>
+                <p class="problem" role="status">{move || refused.get()}</p>
+                <p class="summary" data-test="study-verdict" aria-live="polite">{verdict}</p>
+                <p class="buttons">
+                    <Show when=move || best().is_some()>
+                        <button type="button" data-test="study-take" on:click=take>"Take the best point over as the design"</button>
+                    </Show>
+                </p>
+                <p class="origin">{move || progress.get().map(|done| format!("{done} of {POINTS} points"))}</p>
+                {move || picture(&rows.get(), unit())}
+                <details>
+                    <summary>"As figures"</summary>
+                    {move || table(&rows.get(), unit())}
+                </details>
+                <p class="origin">"Each point is an exact solve. Parts and the warm on-resistance stay where the parts are as they are."</p>
+            </details>
+        </section>
+    }
+}
+
+/// An end of the range.
+#[component]
+fn Edge(app: App, range: RwSignal<(f64, f64)>, unit: &'static str, upper: bool) -> impl IntoView {
+    let typing = Typing::new(app);
+    let (id, label) = if upper {
+        ("study-to", "to")
+    } else {
+        ("study-from", "from")
+    };
+    let value = move || if upper { range.get().1 } else { range.get().0 };
+    let input = move |text: String| {
+        if let Some(Some(number)) = typing.read(text, unit, false) {
+            range.update(|r| if upper { r.1 = number } else { r.0 = number });
+        }
+    };
+    view! {
+        <span class="field">
+            <label for=id>{label}</label>
+            <input id=id data-test=id type="text" autocomplete="off"
+                prop:value=move || typing.shown(Some(value()), unit)
+                aria-invalid=move || typing.problem.get().is_some().to_string()
+                on:input:target=move |e| input(e.target().value())
+                on:blur=move |_| typing.leave()/>
+            <span class="problem" role="status">{move || typing.problem.get()}</span>
+        </span>
+    }
+}
+
+/// Where a run puts what it makes.
+#[derive(Clone, Copy)]
+struct Run {
+    run: StoredValue<u32>,
+    rows: RwSignal<Arc<Vec<Row>>>,
+    progress: RwSignal<Option<usize>>,
+    refused: RwSignal<Option<String>>,
+}
+
+fn start(design: Design, moves: Moves, (from, to): (f64, f64), number: u32, to_put: Run) {
+    if to_put.run.get_value() != number {
+        return;
+    }
+    match Study::new(&design, moves, from, to, POINTS) {
+        Ok(study) => {
+            to_put.refused.set(None);
+            slice(study, Vec::with_capacity(POINTS), number, to_put);
+        }
+        Err(error) => to_put.refused.set(Some(error.to_string())),
+    }
+}
+
+/// Makes rows until the slice is over, then lets the page breathe.
+fn slice(study: Study, mut made: Vec<Row>, number: u32, to_put: Run) {
+    // A newer run has taken over.
+    if to_put.run.get_value() != number {
+        return;
+    }
+    let now = || window_performance();
+    let begun = now();
+    while made.len() < study.len() && now() - begun < SLICE_MS {
+        made.push(study.row(made.len()));
+    }
+    if made.len() == study.len() {
+        to_put.progress.set(None);
+        to_put.rows.set(Arc::new(made));
+    } else {
+        to_put.progress.set(Some(made.len()));
+        set_timeout(move || slice(study, made, number, to_put), Duration::ZERO);
+    }
+}
+
+fn window_performance() -> f64 {
+    leptos::prelude::window()
+        .performance()
+        .map_or(0.0, |p| p.now())
+}
+
+fn picture(rows: &[Row], unit: &'static str) -> Option<impl IntoView + use<>> {
+    const WIDTH: f64 = 560.0;
+    const HEIGHT: f64 = 64.0;
+    let count = rows.len().checked_sub(1).filter(|c| *c > 0)?;
+    let x = move |k: usize| WIDTH * k as f64 / count as f64;
+    let shade = window(rows).map(|Window { from, to, .. }| {
+        let place = |at: f64| rows.iter().position(|row| row.at == at).unwrap_or(0);
+        (x(place(from)), x(place(to)))
+    });
+    let strips = STRIPS
+        .iter()
+        .map(|strip| {
+            let values: Vec<Option<f64>> = rows.iter().map(|r| r.outcome.as_ref().ok().map(strip.value)).collect();
+            let known = || values.iter().flatten().copied();
+            let least = known().fold(f64::INFINITY, f64::min);
+            let most = known().fold(f64::NEG_INFINITY, f64::max);
+            let span = (most - least).max(1e-9 * most.abs()).max(1e-300);
+            let mut path = String::new();
+            let mut pen = 'M';
+            for (k, value) in values.iter().enumerate() {
+                match value {
+                    Some(v) => {
+                        let y = HEIGHT - 4.0 - (HEIGHT - 8.0) * (v - least) / span;
+                        path.push_str(&format!("{pen}{:.1} {y:.1}", x(k)));
+                        pen = 'L';
+                    }
+                    None => pen = 'M',
+                }
+            }
+            let caption = if least <= most {
+                let show = |v: f64| if strip.unit == "%" { format!("{v:.2} %") } else { quantity::format(v, strip.unit) };
+                format!("{} to {}", show(least), show(most))
+            } else {
+                "no stage in this range".to_owned()
+            };
+            view! {
+                <figure>
+                    <figcaption><b>{strip.label}</b>" "{caption}</figcaption>
+                    <svg class="strip" viewBox=format!("0 0 {WIDTH} {HEIGHT}") preserveAspectRatio="none" role="img" aria-label=strip.label>
+                        {shade.map(|(a, b)| view! { <rect class="window" x=a y="0" width=(b - a).max(2.0) height=HEIGHT/> })}
+                        <path d=path/>
+                    </svg>
+                </figure>
+            }
+        })
+        .collect_view();
+    let ends = format!(
+        "{} to {}; shaded where every limit is met",
+        quantity::format(rows[0].at, unit),
+        quantity::format(rows[count].at, unit)
+    );
+    Some(view! { <div class="study">{strips}</div><p class="origin">{ends}</p> })
+}
+
+fn table(rows: &[Row], unit: &'static str) -> impl IntoView + use<> {
+    let lines = rows
+        .iter()
+        .map(|row| {
+            let at = quantity::format(row.at, unit);
+            match &row.outcome {
+                Ok(p) => {
+                    let harmonic = p.harmonics_dbc.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+                    let band = p.band_power_w.map_or_else(String::new, |[a, b]| {
+                        format!("{} to {}", quantity::format(a, "W"), quantity::format(b, "W"))
+                    });
+                    view! {
+                        <tr><th scope="row">{at}</th><td class="number">{quantity::format(p.output_power_w, "W")}</td><td class="number">{per_cent(p.drain_efficiency)}</td><td class="number">{quantity::format(p.drain_peak_v, "V")}</td><td class="number">{format!("{harmonic:.1} dBc")}</td><td class="number">{band}</td><td>{p.failing.join(", ")}</td></tr>
+                    }
+                    .into_any()
+                }
+                Err(reason) => view! { <tr><th scope="row">{at}</th><td colspan="6">{reason.clone()}</td></tr> }.into_any(),
+            }
+        })
+        .collect_view();
+    view! {
+        <div class="scroll"><table>
+            <thead><tr><th scope="col">"At"</th><th scope="col" class="number">"Power"</th><th scope="col" class="number">"Efficiency"</th><th scope="col" class="number">"Drain peak"</th><th scope="col" class="number">"Harmonic"</th><th scope="col" class="number">"Power over the band"</th><th scope="col">"Not met"</th></tr></thead>
+            <tbody>{lines}</tbody>
+        </table></div>
+    }
+}
