@@ -10,7 +10,8 @@ import(at(here.dataset.glue))
     document.body.prepend(note);
   });
 if ('serviceWorker' in navigator && location.protocol.startsWith('http')) {
-  const first = !navigator.serviceWorker.controller;
+  // The very first worker takes charge of a page that is already the newest.
+  let first = !navigator.serviceWorker.controller;
   const offer = (worker) => {
     const bar = document.createElement('p');
     bar.className = 'update';
@@ -32,5 +33,8 @@ if ('serviceWorker' in navigator && location.protocol.startsWith('http')) {
     });
   }).catch(() => {});
   // The design stands in the address, so a reload loses nothing.
-  navigator.serviceWorker.addEventListener('controllerchange', () => { if (!first) location.reload(); });
+  navigator.serviceWorker.addEventListener('controllerchange', () => {
+    if (first) first = false;
+    else location.reload();
+  });
 }

@@ -34,11 +34,17 @@ impl Typing {
         self.problem.set(None);
     }
 
-    /// On leaving the field: wrong text stays to be mended.
-    pub(crate) fn leave(self) {
+    /// On leaving the field: wrong text stays to be mended. True where the field was emptied
+    /// and left so; until then what it held is kept, since the next key may fill it again.
+    pub(crate) fn leave(self) -> bool {
+        let emptied = self
+            .text
+            .with_untracked(|t| t.as_ref().is_some_and(|t| t.trim().is_empty()));
         if self.problem.get_untracked().is_none() {
             self.text.set(None);
+            return emptied;
         }
+        false
     }
 
     /// The text, or the value where nothing is being typed.
@@ -48,16 +54,17 @@ impl Typing {
             .unwrap_or_else(|| value.map_or_else(String::new, |v| quantity::format(v, unit)))
     }
 
-    /// Takes what was typed: a value, nothing where that is allowed, or none where it is wrong.
-    pub(crate) fn read(self, text: String, unit: &str, optional: bool) -> Option<Option<f64>> {
-        let read = if text.trim().is_empty() && optional {
-            Ok(None)
-        } else {
-            quantity::parse(&text, unit).map(Some)
-        };
+    /// Takes what was typed: a value, or none where it is wrong or still empty.
+    pub(crate) fn read(self, text: String, unit: &str, optional: bool) -> Option<f64> {
+        let empty = text.trim().is_empty() && optional;
+        let read = quantity::parse(&text, unit);
         self.text.set(Some(text));
-        self.problem
-            .set(read.as_ref().err().map(ToString::to_string));
+        self.problem.set(
+            read.as_ref()
+                .err()
+                .filter(|_| !empty)
+                .map(ToString::to_string),
+        );
         read.ok()
     }
 }
@@ -110,7 +117,7 @@ pub(crate) fn Field(
     };
     let input = move |text: String| {
         if let Some(number) = typing.read(text, unit, optional) {
-            put(number);
+            put(Some(number));
         }
     };
     let key = move |event: KeyboardEvent| {
@@ -147,7 +154,7 @@ pub(crate) fn Field(
                 aria-describedby=described
                 on:input:target=move |event| input(event.target().value())
                 on:keydown=key
-                on:blur=move |_| typing.leave()
+                on:blur=move |_| if typing.leave() { put(None) }
             />
             {slider.map(|range| view! {
                 <input

@@ -202,7 +202,7 @@ fn Row(app: App, element: Element) -> impl IntoView {
     let set = move |value: Option<f64>| app.design.update(|d| (element.pin)(&mut d.fitted, value));
     let input = move |text: String| {
         if let Some(value) = typing.read(text, element.unit, true) {
-            set(value);
+            set(Some(value));
         }
     };
     let key = move |event: leptos::ev::KeyboardEvent| {
@@ -223,7 +223,7 @@ fn Row(app: App, element: Element) -> impl IntoView {
                     aria-describedby=error_id.clone()
                     on:input:target=move |e| input(e.target().value())
                     on:keydown=key
-                    on:blur=move |_| typing.leave()/>
+                    on:blur=move |_| if typing.leave() { set(None) }/>
                 <span class="problem" id=error_id role="status">{move || typing.problem.get()}</span>
                 <Show when=move || pinned.get().is_some()>
                     <Field app name=element.more.name label=element.more.label unit="Ω" get=element.more.get set=element.more.set optional=true/>

@@ -4,6 +4,7 @@ use crate::examples;
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::design::Design;
 use evenfall_engine::exchange::link;
+use evenfall_engine::quantity;
 use leptos::prelude::*;
 use std::sync::Arc;
 use std::time::Duration;
@@ -106,6 +107,25 @@ pub(crate) fn keep_address(app: App) {
             }
         };
         pending.set_value(set_timeout_with_handle(write, Duration::from_millis(200)).ok());
+    });
+    // The title says which design a tab, a bookmark or a shared link holds.
+    Effect::new(move |_| {
+        let title = app.design.with(|d| {
+            let name = if d.name.is_empty() {
+                "Evenfall".to_owned()
+            } else {
+                format!("{} · Evenfall", d.name)
+            };
+            let power = d
+                .brief
+                .power_w
+                .map_or_else(String::new, |w| format!(" · {}", quantity::format(w, "W")));
+            format!(
+                "{name}{power} at {}",
+                quantity::format(d.brief.carrier_hz, "Hz")
+            )
+        });
+        document().set_title(&title);
     });
     let listener = window_event_listener(leptos::ev::hashchange, move |_| {
         let hash = window().location().hash().unwrap_or_default();

@@ -4,7 +4,7 @@
 //! picture stays until the new one is whole.
 
 use crate::fields::{Field, Typing};
-use crate::figures::per_cent;
+use crate::figures::{per_cent, tidy};
 use crate::state::App;
 use evenfall_engine::design::Design;
 use evenfall_engine::quantity;
@@ -70,7 +70,7 @@ const STRIPS: [Strip; 5] = [
     Strip {
         label: "Drain voltage at turn-on",
         unit: "V",
-        value: |p| p.turn_on_v,
+        value: |p| tidy(p.turn_on_v, p.drain_peak_v),
     },
     Strip {
         label: "Strongest harmonic",
@@ -207,7 +207,7 @@ fn Edge(app: App, range: RwSignal<(f64, f64)>, unit: &'static str, upper: bool) 
     };
     let value = move || if upper { range.get().1 } else { range.get().0 };
     let input = move |text: String| {
-        if let Some(Some(number)) = typing.read(text, unit, false) {
+        if let Some(number) = typing.read(text, unit, false) {
             range.update(|r| if upper { r.1 = number } else { r.0 = number });
         }
     };
@@ -218,7 +218,7 @@ fn Edge(app: App, range: RwSignal<(f64, f64)>, unit: &'static str, upper: bool) 
                 prop:value=move || typing.shown(Some(value()), unit)
                 aria-invalid=move || typing.problem.get().is_some().to_string()
                 on:input:target=move |e| input(e.target().value())
-                on:blur=move |_| typing.leave()/>
+                on:blur=move |_| { typing.leave(); }/>
             <span class="problem" role="status">{move || typing.problem.get()}</span>
         </span>
     }
@@ -288,7 +288,8 @@ fn picture(rows: &[Row], unit: &'static str) -> Option<impl IntoView + use<>> {
             let known = || values.iter().flatten().copied();
             let least = known().fold(f64::INFINITY, f64::min);
             let most = known().fold(f64::NEG_INFINITY, f64::max);
-            let span = (most - least).max(1e-9 * most.abs()).max(1e-300);
+            // A line that moves by less than a ten-thousandth is drawn straight.
+            let span = (most - least).max(1e-4 * most.abs().max(least.abs())).max(1e-300);
             let mut path = String::new();
             let mut pen = 'M';
             for (k, value) in values.iter().enumerate() {

@@ -195,6 +195,15 @@ impl Browser {
         );
     }
 
+    /// Shows the page as on a phone of this width, CSS pixels.
+    pub fn narrow_to(&self, width: u32) {
+        self.command(
+            "goog/cdp/execute",
+            &json!({"cmd": "Emulation.setDeviceMetricsOverride",
+                "params": {"width": width, "height": 800, "deviceScaleFactor": 2, "mobile": true}}),
+        );
+    }
+
     /// Presses a button.
     pub fn press(&self, test: &str) {
         self.script(&format!(
