@@ -108,7 +108,8 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
             {move || app.design.with(|d| matches!(d.device.capacitance, Capacitance::Junction { .. } | Capacitance::Points { .. })).then(|| view! {
                 <p class="problem">"This design's device has a capacitance that depends on voltage. It is kept in the design, but not solved yet: type a constant one to go on."</p>
             })}
-            <h3>"Heat and drive"</h3>
+            <details open>
+                <summary><h3>"Heat and drive"</h3></summary>
             <div class="grid">
                 <Field app name="thermal" label="Junction to ambient (empty: not judged)" unit="K/W" optional=true hint="Thermal resistance from the junction to the air, heatsink included." get=|d| d.device.junction_to_ambient_k_per_w set=|d, v| d.device.junction_to_ambient_k_per_w = v/>
                 <Field app name="per_k" label="On-resistance rise per kelvin" unit="" optional=true hint="Relative to 25 °C: 0.007 is 0.7 % a kelvin." get=|d| d.device.on_resistance_per_k set=|d, v| d.device.on_resistance_per_k = v/>
@@ -116,6 +117,7 @@ pub(crate) fn Brief(app: App) -> impl IntoView {
                 <Field app name="gate_charge" label="Gate charge (empty: not counted)" unit="C" optional=true get=|d| d.device.gate_charge_c set=|d, v| d.device.gate_charge_c = v/>
                 <Field app name="gate_drive" label="Gate drive voltage" unit="V" optional=true get=|d| d.device.gate_drive_v set=|d, v| d.device.gate_drive_v = v/>
             </div>
+            </details>
             <h3>"Limits"</h3>
             <div class="grid">
                 <Field app name="limit_drain" label="Drain peak, fraction of rating" unit="" get=|d| Some(d.brief.limits.drain_fraction_of_rating) set=|d, v| if let Some(v) = v { d.brief.limits.drain_fraction_of_rating = v }/>

@@ -35,13 +35,13 @@ fn Page() -> impl IntoView {
             <p>"Class-E power stages, sized with every loss in place."</p>
         </header>
         <main>
-            <section class="left" aria-label="Brief and stage">
+            <section class="left" aria-label="Brief and elements">
                 <brief::Brief app/>
-                <schematic::Schematic app/>
                 <parts::Parts app/>
             </section>
             <section class="right" aria-label="Answer">
                 <figures::Ledger app/>
+                <schematic::Schematic app/>
                 <scope::Scope app/>
                 <figures::Spectrum app/>
                 <figures::Watts app/>
