@@ -1,6 +1,6 @@
 //! What the engine says of a design: the result object of the design file, and the pictures.
 
-use crate::design::{Capacitor, Coil, Load};
+use crate::design::{Capacitor, Coil, Feed, Load};
 use serde::Serialize;
 
 /// The answer to one design.
@@ -25,6 +25,9 @@ pub struct Refusal {
     /// The field at fault, as a path in the design file such as `stage.loaded_q`.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub field: Option<String>,
+    /// A feed coil with which there would be an answer.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub offer: Option<Feed>,
 }
 
 /// A solved stage.
@@ -90,6 +93,10 @@ pub struct Figures {
     pub drain_efficiency: f64,
     /// Highest drain voltage, volts.
     pub drain_peak_v: f64,
+    /// What the highest drain voltage would be with a constant device capacitance, everything
+    /// sized alike, volts; only where the capacitance depends on the voltage.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub constant_capacitance_peak_v: Option<f64>,
     /// Lowest drain voltage, volts.
     pub drain_least_v: f64,
     /// Highest switch current, amperes.

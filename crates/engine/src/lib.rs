@@ -16,5 +16,5 @@ pub mod sizing;
 pub mod stage;
 pub mod study;
 
-pub use evenfall_solver::{circuit, dynamics, orbit};
+pub use evenfall_solver::{charge, circuit, dynamics, orbit};
 pub use sizing::solve;

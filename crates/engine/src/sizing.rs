@@ -18,7 +18,7 @@ pub use ideal::{Ideal, ideal};
 pub use verdict::judge;
 
 use crate::answer::{Answer, Refusal, Solved, Waveforms};
-use crate::design::{Aim, Design};
+use crate::design::{Aim, Design, Feed};
 use crate::stage::{Reading, Stage, StageError};
 use problem::Problem;
 use std::fmt;
@@ -50,8 +50,12 @@ pub enum SizingError {
         device_f: f64,
         /// Whole shunt capacitance that the stage needs, farads.
         needed_f: f64,
-        /// Highest carrier that it allows at this power and supply, hertz.
+        /// Highest carrier that it allows with this load and supply, hertz.
         highest_hz: f64,
+        /// The load resistance at which it would be right, ohms.
+        load_ohm: f64,
+        /// Resonance q and inductance of the feed coil that absorbs it, where there is one.
+        feed: Option<(f64, f64)>,
     },
     /// Too many elements are pinned for soft switching.
     Pinned {
@@ -66,6 +70,12 @@ pub enum SizingError {
         nearest: String,
         /// Whether the feed coil is pinned.
         pinned: bool,
+    },
+    /// The device's charge law does not allow soft switching.
+    Law {
+        /// The part of the way from a constant capacitance to the law at which it was still
+        /// found.
+        share: f64,
     },
     /// The losses do not allow soft switching.
     Losses {
@@ -105,6 +115,7 @@ impl SizingError {
             Self::Pinned { .. } => Some("fitted"),
             Self::Feed { pinned: true, .. } => Some("fitted.feed"),
             Self::Feed { pinned: false, .. } => Some("stage.feed"),
+            Self::Law { .. } => Some("device.capacitance"),
             Self::Losses { .. } => Some("stage.coil_q"),
             Self::Power { .. } => Some("brief.power_w"),
             Self::Runaway { .. } => Some("device.junction_to_ambient_k_per_w"),
@@ -137,13 +148,26 @@ impl fmt::Display for SizingError {
                 device_f,
                 needed_f,
                 highest_hz,
-            } => write!(
-                f,
-                "the device's own capacitance, {:.4} pF, exceeds the {:.4} pF that the whole shunt needs; a carrier up to about {:.4} MHz would do, or a smaller device, a lower load resistance, or a resonant feed",
-                device_f * 1e12,
-                needed_f * 1e12,
-                highest_hz * 1e-6
-            ),
+                load_ohm,
+                feed,
+            } => {
+                write!(
+                    f,
+                    "the device's own capacitance, {:.4} pF, exceeds the {:.4} pF that the whole shunt needs; a carrier up to {:.4} MHz would do, or a drain load of about {:.4} ohm (more power or a lower supply), or a smaller device",
+                    device_f * 1e12,
+                    needed_f * 1e12,
+                    highest_hz * 1e-6,
+                    load_ohm
+                )?;
+                match feed {
+                    Some((q, henry)) => write!(
+                        f,
+                        ", or a feed coil of {:.4} µH that resonates at q = {q:.3} and absorbs the rest",
+                        henry * 1e6
+                    ),
+                    None => Ok(()),
+                }
+            }
             Self::Pinned { nearest } => f.write_str(nearest),
             Self::Feed { duty, nearest, .. } => {
                 write!(
@@ -151,6 +175,11 @@ impl fmt::Display for SizingError {
                     "at duty {duty} there is no soft switching with {nearest}"
                 )
             }
+            Self::Law { share } => write!(
+                f,
+                "with the device's charge law no soft switching was found, only up to {:.0} % of the way from a constant capacitance of the same energy to it: a larger capacitor beside the device or a smaller device makes it tamer",
+                100.0 * share
+            ),
             Self::Losses { fraction } => write!(
                 f,
                 "the losses leave no soft switching: it was found with {:.0} % of them, so coils of higher Q, a lower on-resistance or a higher supply are needed",
@@ -197,10 +226,26 @@ pub fn solve(design: &Design) -> Answer {
                 load_harmonics_a: reading.load_harmonics_a,
             })
         }
-        Err(error) => Answer::Refused(Refusal {
-            reason: error.to_string(),
-            field: error.field().map(str::to_owned),
-        }),
+        Err(error) => Answer::Refused(refusal(design, error)),
+    }
+}
+
+fn refusal(design: &Design, mut error: SizingError) -> Refusal {
+    let mut offer = None;
+    if let SizingError::Capacitance { feed, .. } = &mut error
+        && let Ok(problem) = Problem::of(design)
+        && let Some(found) = path::absorbing_feed(&problem)
+    {
+        *feed = Some(found);
+        // A little rounder, on the side that leaves room.
+        offer = Some(Feed::Resonant {
+            q: libm::ceil(found.0 * 1e4) / 1e4,
+        });
+    }
+    Refusal {
+        reason: error.to_string(),
+        field: error.field().map(str::to_owned),
+        offer,
     }
 }
 
@@ -255,6 +300,16 @@ fn settled(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError
     let ((stage, mut reading, notes), junction_c) =
         thermal::settle(&problem, trial, |(_, r, _)| r.losses)?;
     let figures = &mut reading.figures;
+    if problem.device_law.is_some() {
+        let constant = Problem {
+            device_law: None,
+            ..problem.clone()
+        };
+        figures.constant_capacitance_peak_v = path::size(&constant, &mut Vec::new())
+            .ok()
+            .and_then(|stage| stage.probe().ok())
+            .map(|probed| probed.drain_peak_v);
+    }
     figures.junction_c = junction_c;
     figures.gate_drive_w = drive(design)?;
     figures.power_added_efficiency = figures

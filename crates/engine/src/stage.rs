@@ -2,6 +2,7 @@
 //! engineer reads.
 
 use crate::answer::{Figures, Losses, Values, Waveforms};
+use crate::charge::ChargeLaw;
 use crate::circuit::{Circuit, Element};
 use crate::design::{Capacitor, Coil, Diode, Load};
 use crate::orbit::{self, ClockStep, Orbit, OrbitError, Probe};
@@ -12,13 +13,15 @@ use std::ops::Range;
 
 /// Unaccounted part of the supply power above which a solve is an error.
 pub const BALANCE_BOUND: f64 = 1e-9;
+/// The same where a capacitance depends on its voltage.
+pub const CURVED_BALANCE_BOUND: f64 = 1e-6;
 /// Harmonics that are reported.
 pub const HARMONICS: usize = 20;
 /// Samples in one period of the waveforms.
 pub const SAMPLES: usize = 256;
 
 /// A stage as built: every value known. SI units.
-#[derive(Debug, Clone, Copy, PartialEq)]
+#[derive(Debug, Clone, PartialEq)]
 pub struct Stage {
     /// Carrier, hertz.
     pub carrier_hz: f64,
@@ -30,8 +33,11 @@ pub struct Stage {
     pub on_resistance_ohm: f64,
     /// Time in which the switch current falls to zero at turn-off, seconds; 0 for at once.
     pub fall_s: f64,
-    /// Constant output capacitance of the device, farads; 0 for none.
+    /// Output capacitance of the device, farads; 0 for none. With a charge law a typical
+    /// value: the constant capacitance of the same energy at the expected peak.
     pub device_f: f64,
+    /// Charge law of the output capacitance; none where it is constant.
+    pub device_law: Option<ChargeLaw>,
     /// Body diode.
     pub diode: Option<Diode>,
     /// Feed coil.
@@ -118,6 +124,7 @@ impl Stage {
             on_resistance_ohm: 0.1,
             fall_s: 0.0,
             device_f: 0.0,
+            device_law: None,
             diode: None,
             feed: part(5e-6, 0.1),
             shunt: part(638.975e-12, 0.01),
@@ -144,7 +151,7 @@ impl Stage {
         let omega = TAU * self.carrier_hz;
         let mut c = Circuit {
             branches: Vec::with_capacity(12),
-            couplings: Vec::new(),
+            ..Circuit::default()
         };
         let source = c.add(
             "supply",
@@ -178,9 +185,13 @@ impl Stage {
             c.add("falling switch current", drain, ground, element)
         });
         let device = (self.device_f > 0.0).then(|| {
-            let element = Element::Capacitor {
-                farad: self.device_f,
-                ohm: 0.0,
+            let farad = self.device_f;
+            let element = match &self.device_law {
+                Some(law) => {
+                    c.laws.push(law.clone());
+                    Element::Varying { law: 0, farad }
+                }
+                None => Element::Capacitor { farad, ohm: 0.0 },
             };
             c.add("device capacitance", drain, ground, element)
         });
@@ -312,7 +323,11 @@ impl Stage {
         let layout = self.layout();
         let orbit = self.solve_layout(&layout)?;
         let reading = read(self, &layout, orbit.as_ref(), highest.max(1));
-        if reading.balance.abs() <= BALANCE_BOUND {
+        let bound = match self.device_law {
+            Some(_) => CURVED_BALANCE_BOUND,
+            None => BALANCE_BOUND,
+        };
+        if reading.balance.abs() <= bound {
             Ok(reading)
         } else {
             Err(StageError::Balance {
@@ -417,6 +432,7 @@ fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Re
         total_output_power_w,
         drain_efficiency: output_power_w / supply_power_w,
         drain_peak_v: drain_range.greatest,
+        constant_capacitance_peak_v: None,
         drain_least_v: drain_range.least,
         switch_peak_a: orbit.extremes(switch).greatest,
         switch_rms_a: (square(switch) + layout.fall.map_or(0.0, |b| square(Probe::Current(b))))
@@ -453,7 +469,11 @@ struct Discharge {
 impl Discharge {
     fn at_turn_on(stage: &Stage, turn_on_v: f64, layout: &Layout, orbit: &dyn Orbit) -> Self {
         let frequency = stage.carrier_hz;
-        let device_w = 0.5 * stage.device_f * turn_on_v * turn_on_v * frequency;
+        let device_j = match &stage.device_law {
+            Some(law) => law.energy_j(turn_on_v),
+            None => 0.5 * stage.device_f * turn_on_v * turn_on_v,
+        };
+        let device_w = device_j * frequency;
         let shunt_v = layout.shunt.map_or(0.0, |branch| {
             let (current, _) = orbit.before_end(Probe::Current(branch));
             turn_on_v - current * stage.shunt.esr_ohm

@@ -163,15 +163,16 @@ impl Study {
 
     fn point(&self, at: f64) -> Result<Point, String> {
         let mut design = self.design.clone();
-        let (stage, reading) = match self.built {
+        let (stage, reading) = match &self.built {
             None => {
                 design.stage.loaded_q = at;
                 let (stage, reading) = sizing::sized_stage(&design).map_err(|e| e.to_string())?;
                 (stage, reading)
             }
             Some(built) => {
-                let stage = moved(&built, self.moves, at)?;
-                (stage, stage.solve().map_err(|e| e.to_string())?)
+                let stage = moved(built, self.moves, at)?;
+                let reading = stage.solve().map_err(|e| e.to_string())?;
+                (stage, reading)
             }
         };
         let mut point = Point::of(&reading, &sizing::judge(&design, &stage, &reading));
@@ -224,7 +225,7 @@ impl Point {
 
 /// The stage with one thing moved.
 fn moved(built: &Stage, moves: Moves, to: f64) -> Result<Stage, String> {
-    let mut stage = *built;
+    let mut stage = built.clone();
     match moves {
         Moves::LoadedQ => {}
         Moves::Carrier => {

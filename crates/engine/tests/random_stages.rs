@@ -39,6 +39,7 @@ fn stage(dice: &mut Dice) -> Stage {
         on_resistance_ohm: r * dice.scattered(0.003, 0.1),
         fall_s: 0.0,
         device_f: 0.0,
+        device_law: None,
         diode: Some(Diode {
             forward_v: dice.between(0.4, 1.0),
             slope_ohm: r * dice.between(0.001, 0.05),
@@ -105,6 +106,7 @@ fn frequency_impedance_and_voltage_only_scale() {
             on_resistance_ohm: a.on_resistance_ohm * z,
             fall_s: a.fall_s / f,
             device_f: 0.0,
+        device_law: None,
             diode: a.diode.map(|d| Diode {
                 forward_v: d.forward_v * v,
                 slope_ohm: d.slope_ohm * z,

@@ -4,6 +4,8 @@
 //! the topology. A branch's current flows from its first node to its second, and its
 //! voltage is that of the first node against the second.
 
+use crate::charge::ChargeLaw;
+
 /// A node's number; 0 is ground.
 pub type Node = usize;
 
@@ -28,6 +30,14 @@ pub enum Element {
         farad: f64,
         /// Ohms in series.
         ohm: f64,
+    },
+    /// A capacitor whose capacitance depends on its voltage.
+    Varying {
+        /// Number of its charge law in [`Circuit::laws`].
+        law: usize,
+        /// A typical capacitance of it, farads: where the search for the steady state starts,
+        /// and the scale of its charge.
+        farad: f64,
     },
     /// A direct voltage.
     Source {
@@ -99,6 +109,8 @@ pub struct Circuit {
     pub branches: Vec<Branch>,
     /// Every pair of coupled coils.
     pub couplings: Vec<Coupling>,
+    /// Charge laws of the capacitors that have one.
+    pub laws: Vec<ChargeLaw>,
 }
 
 impl Circuit {
@@ -121,7 +133,7 @@ impl Circuit {
                 .collect()
         };
         (
-            pick(|e| matches!(e, Element::Capacitor { .. })),
+            pick(|e| matches!(e, Element::Capacitor { .. } | Element::Varying { .. })),
             pick(|e| matches!(e, Element::Inductor { .. })),
         )
     }
@@ -131,6 +143,12 @@ impl Circuit {
     pub fn falls(&self) -> impl Iterator<Item = usize> + '_ {
         (0..self.branches.len())
             .filter(|&k| matches!(self.branches[k].element, Element::Fall { .. }))
+    }
+
+    /// Numbers of the branches whose capacitance depends on their voltage.
+    pub fn varying(&self) -> impl Iterator<Item = usize> + '_ {
+        (0..self.branches.len())
+            .filter(|&k| matches!(self.branches[k].element, Element::Varying { .. }))
     }
 
     /// Number of states.

@@ -71,6 +71,9 @@ pub struct Mode {
     pub project: Option<Rows>,
     /// Row k: state k as it is when the clock enters this mode; none where nothing changes.
     pub latch: Option<Rows>,
+    /// Row k: how much every state's voltage moves for a coulomb moved into capacitor k of
+    /// [`Circuit::varying`] beyond what its typical capacitance holds.
+    pub lift: Rows,
     /// Row k: voltage of branch k.
     pub voltage: Rows,
     /// Row k: current of branch k.
@@ -178,6 +181,15 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
                 check(farad, f64::MIN_POSITIVE)?,
                 check(ohm, 0.0)?,
             ),
+            Element::Varying { law, farad } => {
+                let law = circuit.laws.get(law).map_or(f64::NAN, |_| law as f64);
+                check(law, 0.0)?;
+                (
+                    Some(Kind::Capacitor),
+                    check(farad, f64::MIN_POSITIVE)?,
+                    0.0,
+                )
+            }
             Element::Source { volt } => (Some(Kind::Source), check(volt, f64::MIN)?, 0.0),
             Element::Switch { ohm } => (None, 0.0, check(ohm, 0.0)?),
             Element::Fall { second, .. } => {

@@ -4,9 +4,10 @@
 //! A crate of its own because it alone is compiled for speed; what stands on it is compiled
 //! for size, since it is sent to a browser. Plain data in and out; SI units; no unsafe.
 //!
-//! [`circuit`] → [`dynamics`] → [`orbit`].
+//! [`charge`] → [`circuit`] → [`dynamics`] → [`orbit`].
 #![forbid(unsafe_code)]
 
+pub mod charge;
 pub mod circuit;
 pub mod dynamics;
 pub mod orbit;

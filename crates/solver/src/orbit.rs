@@ -5,6 +5,7 @@
 //! period map, whose derivative is exact, the instants at which diodes start and stop
 //! included; `meter` reads means, products, peaks and spectra off the solution.
 
+mod curved;
 mod flow;
 mod meter;
 mod shoot;
@@ -69,6 +70,11 @@ pub enum OrbitError {
         /// Events counted before giving up.
         events: usize,
     },
+    /// A stretch needs more steps than are made.
+    TooManySteps {
+        /// Steps made before giving up.
+        steps: usize,
+    },
     /// Newton's method did not settle.
     NotConverged {
         /// Iterations made.
@@ -105,6 +111,10 @@ impl fmt::Display for OrbitError {
                     "a diode started and stopped more than {events} times within one clock step"
                 )
             }
+            Self::TooManySteps { steps } => write!(
+                f,
+                "the charge of a voltage-dependent capacitance could not be followed in {steps} steps"
+            ),
             Self::NotConverged {
                 iterations,
                 residual,
@@ -133,6 +143,10 @@ pub trait Orbit {
     fn iterations(&self) -> usize;
     /// Number of stretches between events.
     fn pieces(&self) -> usize;
+    /// The state at the period's start: voltages of the capacitors, currents of the coils.
+    fn start(&self) -> Vec<f64>;
+    /// The greatest magnitude of each state that was met.
+    fn sizes(&self) -> Vec<f64>;
     /// Mean of the product of two quantities (of one with itself: its mean square).
     fn mean_product(&self, first: Probe, second: Probe) -> f64;
     /// Mean of a quantity.
@@ -160,6 +174,9 @@ pub const MOST_STATES: usize = 32;
 /// # Errors
 /// See [`OrbitError`].
 pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, OrbitError> {
+    if circuit.varying().next().is_some() {
+        return Ok(Box::new(curved::solve(circuit, clock)?));
+    }
     let states = circuit.state_count();
     macro_rules! sized {
         ($($n:literal),*) => {

@@ -67,7 +67,7 @@ fn moved(problem: &Problem, stage: &Stage, [shunt, reactance]: [f64; 2]) -> Opti
     if total < stage.device_f || elastance <= 0.0 {
         return None;
     }
-    let mut next = *stage;
+    let mut next = stage.clone();
     let capacitor_q = |c: f64| problem.capacitor_q.map_or(0.0, |q| 1.0 / (omega * c * q));
     next.shunt.value = total - stage.device_f;
     next.shunt.esr_ohm = if next.shunt.value > 0.0 {
@@ -82,7 +82,7 @@ fn moved(problem: &Problem, stage: &Stage, [shunt, reactance]: [f64; 2]) -> Opti
 
 /// The stage at the wanted power, with its efficiency; none beyond the drain limit.
 fn judged(problem: &Problem, stage: &Stage) -> Option<(Stage, f64)> {
-    let mut stage = *stage;
+    let mut stage = stage.clone();
     let mut probed = stage.probe().ok()?;
     if problem.seeks_load() {
         let power = problem.power_w?;
@@ -103,7 +103,7 @@ fn judged(problem: &Problem, stage: &Stage) -> Option<(Stage, f64)> {
 
 /// The stage at `factor` times the impedance, the device staying as it is.
 fn scaled(stage: &Stage, factor: f64, problem: &Problem) -> Stage {
-    let mut next = *stage;
+    let mut next = stage.clone();
     let total = (stage.device_f + stage.shunt.value) / factor;
     next.load.r_ohm *= factor;
     if problem.pins.feed.is_none()

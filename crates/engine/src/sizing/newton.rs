@@ -9,7 +9,10 @@ const MET: f64 = 1e-10;
 /// What is left where a very high Q and a very stiff choke amplify rounding: a millionth
 /// of the supply is far below anything that can be measured.
 const ROUNDING: f64 = 1e-6;
+/// The same where a charge law is followed in steps.
+const CURVED_MET: f64 = 1e-8;
 const MOST_ITERATIONS: usize = 40;
+const LONGEST: f64 = 0.5;
 /// Least 1/(w C2 R): below it the series capacitor has become a blocking capacitor.
 const LEAST_ELASTANCE: f64 = 1e-7;
 
@@ -95,6 +98,87 @@ impl Search<'_> {
         moved
     }
 
+    fn moved_by(&self, point: &Point, step: &DVector<f64>, scale: f64) -> Point {
+        self.unknowns
+            .iter()
+            .zip(step)
+            .fold(*point, |at, (&unknown, &length)| {
+                self.moved(&at, unknown, scale * length)
+            })
+    }
+
+    /// How the conditions move with the unknowns, by differences.
+    fn jacobian(&self, point: &Point, way: Way, here: &DVector<f64>) -> Option<DMatrix<f64>> {
+        const PROBE_STEP: f64 = 2e-5;
+        let count = self.unknowns.len();
+        let mut jacobian = DMatrix::<f64>::zeros(count, count);
+        for (column, &unknown) in self.unknowns.iter().enumerate() {
+            let up = self.conditions(&self.moved(point, unknown, PROBE_STEP), way);
+            let down = self.conditions(&self.moved(point, unknown, -PROBE_STEP), way);
+            let difference = match (up, down) {
+                (Some(up), Some(down)) => (up - down) / (2.0 * PROBE_STEP),
+                (Some(up), None) => (up - here) / PROBE_STEP,
+                (None, Some(down)) => (here - down) / PROBE_STEP,
+                (None, None) => return None,
+            };
+            jacobian.set_column(column, &difference);
+        }
+        Some(jacobian)
+    }
+
+    /// Broyden's method (Math. Comp. 19, 1965; from memory) from the derivative with a constant
+    /// capacitance, which costs next to nothing beside one steady state with a charge law.
+    fn broyden(&self, start: Point, way: Way) -> Result<Point, Missed> {
+        const MOST_STEPS: usize = 24;
+        let mut point = start;
+        let mut here = self.conditions(&point, way).ok_or(Missed(f64::INFINITY))?;
+        let flat = Way { bend: 0.0, ..way };
+        let mut jacobian = self
+            .conditions(&point, flat)
+            .and_then(|at| self.jacobian(&point, flat, &at))
+            .ok_or(Missed(here.amax()))?;
+        let mut anew = false;
+        for _ in 0..MOST_STEPS {
+            let residual = here.amax();
+            if residual < CURVED_MET {
+                return Ok(point);
+            }
+            let missed = Missed(residual);
+            let step = jacobian.clone().lu().solve(&-&here).ok_or(missed)?;
+            let scale = (LONGEST / step.amax()).min(1.0);
+            let mut next = None;
+            for shorter in [1.0, 0.25] {
+                let candidate = self.moved_by(&point, &step, shorter * scale);
+                if let Some(there) = self.conditions(&candidate, way)
+                    && there.amax() < residual
+                {
+                    next = Some((candidate, there, shorter * scale));
+                    break;
+                }
+            }
+            match next {
+                Some((candidate, there, scale)) => {
+                    let taken = step * scale;
+                    let error = &there - &here - &jacobian * &taken;
+                    jacobian += error * taken.transpose() / taken.norm_squared();
+                    (point, here) = (candidate, there);
+                }
+                None if residual < ROUNDING => return Ok(point),
+                // Once more with the true derivative.
+                None if !anew => {
+                    anew = true;
+                    jacobian = self.jacobian(&point, way, &here).ok_or(missed)?;
+                }
+                None => return Err(missed),
+            }
+        }
+        if here.amax() < ROUNDING {
+            Ok(point)
+        } else {
+            Err(Missed(here.amax()))
+        }
+    }
+
     /// The point that meets every condition, from `start`.
     pub(super) fn newton(&self, start: Point, way: Way) -> Result<Point, Missed> {
         self.newton_within(start, way, MOST_ITERATIONS)
@@ -107,8 +191,9 @@ impl Search<'_> {
         way: Way,
         most: usize,
     ) -> Result<Point, Missed> {
-        const PROBE_STEP: f64 = 2e-5;
-        const LONGEST: f64 = 0.5;
+        if way.bend > 0.0 {
+            return self.broyden(start, way);
+        }
         let mut point = start;
         let mut here = self.conditions(&point, way).ok_or(Missed(f64::INFINITY))?;
         for _ in 0..most {
@@ -117,30 +202,19 @@ impl Search<'_> {
                 return Ok(point);
             }
             let stuck = Missed(residual);
-            let count = self.unknowns.len();
-            let mut jacobian = DMatrix::<f64>::zeros(count, count);
-            for (column, &unknown) in self.unknowns.iter().enumerate() {
-                let up = self.conditions(&self.moved(&point, unknown, PROBE_STEP), way);
-                let down = self.conditions(&self.moved(&point, unknown, -PROBE_STEP), way);
-                let difference = match (up, down) {
-                    (Some(up), Some(down)) => (up - down) / (2.0 * PROBE_STEP),
-                    (Some(up), None) => (up - &here) / PROBE_STEP,
-                    (None, Some(down)) => (&here - down) / PROBE_STEP,
-                    (None, None) if residual < ROUNDING => return Ok(point),
-                    (None, None) => return Err(stuck),
-                };
-                jacobian.set_column(column, &difference);
-            }
+            let Some(jacobian) = self.jacobian(&point, way, &here) else {
+                if residual < ROUNDING {
+                    return Ok(point);
+                }
+                return Err(stuck);
+            };
             let Some(step) = jacobian.lu().solve(&-&here) else {
                 return Err(stuck);
             };
             let mut scale = (LONGEST / step.amax()).min(1.0);
             let mut accepted = None;
             for _ in 0..8 {
-                let mut candidate = point;
-                for (&unknown, &length) in self.unknowns.iter().zip(&step) {
-                    candidate = self.moved(&candidate, unknown, scale * length);
-                }
+                let candidate = self.moved_by(&point, &step, scale);
                 if let Some(there) = self.conditions(&candidate, way)
                     && (there.amax() < residual * (1.0 - 0.1 * scale) || there.amax() < MET)
                 {

@@ -22,6 +22,43 @@ const LONGEST_FACTOR: f64 = 2.2;
 
 /// The stage that meets the conditions, the body diode put back.
 pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingError> {
+    let (Some(_), None, Some(power)) = (&problem.device_law, problem.supply_v, problem.power_w)
+    else {
+        return size_at(problem, notes);
+    };
+    // Where the capacitance depends on the voltage, another supply is another stage.
+    let mut supply_v = problem.expected_supply_v();
+    for _ in 0..MOST_ITERATIONS {
+        let given = Problem {
+            supply_v: Some(supply_v),
+            ..problem.clone()
+        };
+        let stage = size_at(&given, &mut notes.clone())?;
+        let factor = (power / probe_w(&stage)?).sqrt();
+        if (factor - 1.0).abs() < 1e-10 {
+            size_at(&given, notes)?;
+            return Ok(stage);
+        }
+        supply_v *= factor;
+    }
+    Err(no_supply(power))
+}
+
+fn probe_w(stage: &Stage) -> Result<f64, SizingError> {
+    stage
+        .probe()
+        .map(|probed| probed.output_power_w)
+        .map_err(|e| SizingError::Stage(e.into()))
+}
+
+fn no_supply(power: f64) -> SizingError {
+    SizingError::Field {
+        field: "brief.power_w",
+        reason: format!("no supply was found that gives {power} W with this load"),
+    }
+}
+
+fn size_at(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingError> {
     let pins = &problem.pins;
     let branch_pinned = pins.series_coil.is_some() && pins.series_capacitor.is_some();
     let shunt_pinned = pins.shunt.is_some();
@@ -30,7 +67,7 @@ pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, 
         // Nothing that soft switching depends on is left open.
         let stage = Stage {
             diode: problem.diode,
-            ..problem.stage(&point, problem.wanted())
+            ..problem.stage(&point, problem.bent())
         };
         return with_supply(problem, stage);
     }
@@ -63,8 +100,11 @@ pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, 
         unknowns,
         seeks_power,
     };
-    point = arrive(&search, point)?;
-    let stage = problem.stage(&point, problem.wanted());
+    point = match &problem.device_law {
+        Some(_) => bend(&search, point)?,
+        None => arrive(&search, point)?,
+    };
+    let stage = problem.stage(&point, problem.bent());
     if !shunt_pinned {
         let needed_f = point.shunt / (problem.omega() * point.load_ohm);
         if needed_f < problem.device_f * (1.0 - 1e-9) {
@@ -72,6 +112,8 @@ pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, 
                 device_f: problem.device_f,
                 needed_f,
                 highest_hz: problem.carrier_hz * needed_f / problem.device_f,
+                load_ohm: point.load_ohm * needed_f / problem.device_f,
+                feed: None,
             });
         }
     }
@@ -84,6 +126,51 @@ pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, 
     )
 }
 
+/// The feed resonance q at which the stage needs all of the device's capacitance and hardly
+/// more, with its coil in henries; none where no feed coil absorbs so much.
+pub(super) fn absorbing_feed(problem: &Problem) -> Option<(f64, f64)> {
+    const SOFTEST: f64 = 0.43;
+    /// Where the shunt capacitance that a stage needs is greatest (Acar, Annema and Nauta, IEEE
+    /// TCAS-I 54(12), 2007; value from memory).
+    const GREATEST: f64 = 1.468;
+    const MOST_TRIALS: usize = 14;
+    const LEFT: std::ops::Range<f64> = 1.0..1.02;
+    if problem.pins.feed.is_some() || problem.pins.shunt.is_some() {
+        return None;
+    }
+    let needed = |q: f64| {
+        let with = Problem {
+            feed: Feed::Resonant { q },
+            ..problem.clone()
+        };
+        match size(&with, &mut Vec::new()) {
+            Ok(stage) => Some((
+                (stage.device_f + stage.shunt.value) / problem.device_f,
+                stage.feed.value,
+            )),
+            Err(SizingError::Capacitance { needed_f, .. }) => Some((needed_f / problem.device_f, 0.0)),
+            Err(_) => None,
+        }
+    };
+    let (mut low, mut high) = (SOFTEST, GREATEST);
+    if needed(high)?.0 < LEFT.start {
+        return None;
+    }
+    for _ in 0..MOST_TRIALS {
+        let q = 0.5 * (low + high);
+        let (share, henry) = needed(q)?;
+        if LEFT.contains(&share) {
+            return Some((q, henry));
+        }
+        if share < LEFT.start {
+            low = q;
+        } else {
+            high = q;
+        }
+    }
+    needed(high).map(|(_, henry)| (high, henry))
+}
+
 /// Scales the supply to the power where the supply was left open.
 fn with_supply(problem: &Problem, stage: Stage) -> Result<Stage, SizingError> {
     let (None, Some(power)) = (problem.supply_v, problem.power_w) else {
@@ -93,10 +180,10 @@ fn with_supply(problem: &Problem, stage: Stage) -> Result<Stage, SizingError> {
     // Power goes with the square of the supply as long as no diode conducts; where one
     // does, a few secant steps settle it.
     for _ in 0..MOST_ITERATIONS {
-        let got = Stage { supply_v, ..stage }
-            .probe()
-            .map_err(|e| SizingError::Stage(e.into()))?
-            .output_power_w;
+        let got = probe_w(&Stage {
+            supply_v,
+            ..stage.clone()
+        })?;
         let factor = (power / got).sqrt();
         if !(factor.is_finite() && factor > 0.0) {
             break;
@@ -106,15 +193,12 @@ fn with_supply(problem: &Problem, stage: Stage) -> Result<Stage, SizingError> {
             return Ok(Stage { supply_v, ..stage });
         }
     }
-    Err(SizingError::Field {
-        field: "brief.power_w",
-        reason: format!("no supply was found that gives {power} W with this load"),
-    })
+    Err(no_supply(power))
 }
 
 fn start(problem: &Problem) -> Point {
     let ideal = ideal(problem.duty);
-    let supply_v = problem.supply_v.unwrap_or(10.0);
+    let supply_v = problem.expected_supply_v();
     let load_ohm = match (problem.pins.drain_load, problem.power_w) {
         (Some(load), _) => load.r_ohm,
         (None, Some(power)) => ideal.power * supply_v * supply_v / power,
@@ -150,6 +234,45 @@ fn too_many_pins(problem: &Problem) -> SizingError {
     SizingError::Pinned { nearest }
 }
 
+/// With the device's charge law: from the stage with the constant capacitance of the same
+/// energy. Where there is none for want of loaded Q, down to it with the law in place.
+fn bend(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
+    let problem = search.problem;
+    let bent = problem.bent();
+    let (from, missing) = match arrive(search, start) {
+        Ok(point) => (point, problem.loaded_q),
+        Err(SizingError::LoadedQ { least, .. }) => {
+            const ABOVE: f64 = 1.3;
+            let more = Problem {
+                loaded_q: ABOVE * least,
+                ..problem.clone()
+            };
+            let above = Search {
+                problem: &more,
+                unknowns: search.unknowns.clone(),
+                seeks_power: search.seeks_power,
+            };
+            (arrive(&above, start)?, ABOVE * least)
+        }
+        Err(error) => return Err(error),
+    };
+    let law = |t: f64| Way {
+        bend: t,
+        loaded_q: missing,
+        ..bent
+    };
+    let point =
+        walk(search, from, law).map_err(|stalled| SizingError::Law { share: stalled.way.bend })?;
+    if missing == problem.loaded_q {
+        return Ok(point);
+    }
+    let lower = |t: f64| Way {
+        loaded_q: missing * libm::pow(problem.loaded_q / missing, t),
+        ..bent
+    };
+    walk(search, point, lower).map_err(|stalled| loaded_q_error(search, &stalled))
+}
+
 /// Where a leg ended short.
 struct Stalled {
     point: Point,
@@ -169,6 +292,7 @@ fn arrive(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
         .map(|q| problem.loaded_q.max(q))
         .find_map(|q0| {
             let ideal = Way {
+                bend: 0.0,
                 losses: 0.0,
                 feed: 0.0,
                 loaded_q: q0,
@@ -188,6 +312,7 @@ fn arrive(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
     let fed = |t: f64| Way { feed: t, ..ideal };
     let point = walk(search, point, fed).map_err(|stalled| feed_error(problem, &stalled))?;
     let lossy = |t: f64| Way {
+        bend: 0.0,
         losses: t,
         feed: 1.0,
         loaded_q: q0,
@@ -285,6 +410,7 @@ fn by_load(
         seeks_power: false,
     };
     let lossy = |t: f64| Way {
+        bend: 0.0,
         losses: t,
         feed: 1.0,
         loaded_q: q0,

@@ -2,6 +2,7 @@
 
 use super::SizingError;
 use super::thermal::Thermal;
+use crate::charge::{ChargeLaw, LawError};
 use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load};
 use crate::stage::{Part, Stage};
 use std::f64::consts::TAU;
@@ -20,7 +21,9 @@ pub(super) struct Problem {
     pub(super) capacitor_q: Option<f64>,
     pub(super) on_resistance_ohm: f64,
     pub(super) fall_s: f64,
+    /// Output capacitance, with a charge law the one of the same energy at the expected peak.
     pub(super) device_f: f64,
+    pub(super) device_law: Option<ChargeLaw>,
     pub(super) diode: Option<Diode>,
     pub(super) drain_limit_v: Option<f64>,
     /// How the device heats up; none where its thermal resistance is not given.
@@ -40,9 +43,10 @@ pub(super) struct Point {
 }
 
 /// Where between the ideal stage and the wanted one: losses and feed from 0 (ideal) to 1
-/// (wanted), and the loaded Q.
+/// (wanted), the loaded Q, and the device's capacitance from constant (0) to its law (1).
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Way {
+    pub(super) bend: f64,
     pub(super) losses: f64,
     pub(super) feed: f64,
     pub(super) loaded_q: f64,
@@ -119,23 +123,22 @@ impl Problem {
                 ),
             ));
         }
-        let device_f = match device.capacitance {
-            Capacitance::None => 0.0,
-            Capacitance::Constant { c_f } => {
-                not_negative("device.capacitance", "the device's capacitance", c_f)?
-            }
-            Capacitance::Junction { .. } => {
-                return Err(field(
-                    "device.capacitance",
-                    "a capacitance of kind `junction` is not solved yet".into(),
-                ));
-            }
-            Capacitance::Points { .. } => {
-                return Err(field(
-                    "device.capacitance",
-                    "a capacitance of kind `points` is not solved yet".into(),
-                ));
-            }
+        let law = |law: Result<ChargeLaw, LawError>| {
+            law.map(Some)
+                .map_err(|e| field("device.capacitance", e.to_string()))
+        };
+        let (constant_f, device_law) = match &device.capacitance {
+            Capacitance::None => (0.0, None),
+            Capacitance::Constant { c_f } => (
+                not_negative("device.capacitance", "the device's capacitance", *c_f)?,
+                None,
+            ),
+            Capacitance::Junction {
+                cj0_f,
+                built_in_v,
+                grading,
+            } => (0.0, law(ChargeLaw::junction(*cj0_f, *built_in_v, *grading))?),
+            Capacitance::Points { v, c_f } => (0.0, law(ChargeLaw::points(v, c_f))?),
         };
         let thermal = match device.junction_to_ambient_k_per_w {
             None => {
@@ -237,7 +240,8 @@ impl Problem {
                 "the fall time",
                 device.fall_time_s.unwrap_or(0.0),
             )?,
-            device_f,
+            device_f: constant_f,
+            device_law,
             diode,
             drain_limit_v: device
                 .rating_v
@@ -247,9 +251,26 @@ impl Problem {
             notes,
         };
         problem.check_fall()?;
-        problem.check_pins()?;
         problem.settle_load(brief.load)?;
+        problem.settle_device();
+        problem.check_pins()?;
         Ok(problem)
+    }
+
+    /// The supply, or about the one that power and load ask for, volts.
+    pub(super) fn expected_supply_v(&self) -> f64 {
+        let load_ohm = self.pins.drain_load.map_or(1.0, |l| l.r_ohm);
+        let power = self.power_w.unwrap_or(1.0);
+        self.supply_v
+            .unwrap_or_else(|| (power * load_ohm / super::ideal(self.duty).power).sqrt())
+    }
+
+    /// The typical capacitance of a charge law: the one of the same energy at the peak of the
+    /// ideal stage at half duty, 3.56 times the supply (Raab 1977).
+    fn settle_device(&mut self) {
+        if let Some(law) = &self.device_law {
+            self.device_f = law.energy_equivalent_f(3.56 * self.expected_supply_v());
+        }
     }
 
     fn check_fall(&self) -> Result<(), SizingError> {
@@ -358,12 +379,21 @@ impl Problem {
         }
     }
 
-    /// The end of the way.
+    /// The end of the way but for the device's charge law.
     pub(super) fn wanted(&self) -> Way {
         Way {
+            bend: 0.0,
             losses: 1.0,
             feed: 1.0,
             loaded_q: self.loaded_q,
+        }
+    }
+
+    /// The end of the way.
+    pub(super) fn bent(&self) -> Way {
+        Way {
+            bend: 1.0,
+            ..self.wanted()
         }
     }
 
@@ -416,17 +446,23 @@ impl Problem {
         };
         let feed_l = self.feed_l(point, way);
         let shunt_f = self.pins.shunt.map_or(total_f - self.device_f, |p| p.c_f);
+        // Where the device alone is too large, as much of it as the stage needs.
+        let device_f = if shunt_f > 0.0 {
+            self.device_f
+        } else {
+            total_f
+        };
         Stage {
             carrier_hz: self.carrier_hz,
             duty: self.duty,
             supply_v: point.supply_v,
             on_resistance_ohm: self.on_resistance_ohm * way.losses,
             fall_s: self.fall_s * way.losses,
-            device_f: if shunt_f > 0.0 {
-                self.device_f
-            } else {
-                total_f
-            },
+            device_f,
+            device_law: self.device_law.as_ref().filter(|_| way.bend > 0.0).map(|law| {
+                law.scaled(way.bend * device_f / self.device_f)
+                    .beside((1.0 - way.bend) * device_f)
+            }),
             diode: None,
             feed: coil(feed_l, self.pins.feed),
             shunt: capacitor(shunt_f.max(0.0), self.pins.shunt.and_then(|p| p.esr_ohm)),

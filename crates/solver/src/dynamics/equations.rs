@@ -176,8 +176,10 @@ impl Equations<'_> {
                 }
             }
         }
+        let lift = self.lift(&places, &state_of, mass_c.as_ref())?;
         let (voltage, current) = self.branches(&tree_v, &link_i);
         Ok(Mode {
+            lift,
             slopes,
             project,
             latch: None,
@@ -233,6 +235,55 @@ impl Equations<'_> {
             tree_v.row_mut(t).copy_from_slice(charge.row(t - first));
         }
         Ok(Some(mass))
+    }
+
+    /// What a coulomb in each varying capacitor does to every voltage: it spreads over the
+    /// capacitors that share a loop with it, and does nothing where a source holds the voltage.
+    fn lift(
+        &self,
+        places: &Places,
+        state_of: &[usize],
+        mass: Option<&DMatrix<f64>>,
+    ) -> Result<Rows, DynamicsError> {
+        let states = self.circuit.state_count();
+        let mut lift = Rows::zeros(self.circuit.varying().count(), states + 1);
+        let first = places.tree_c.start;
+        for (k, branch) in self.circuit.varying().enumerate() {
+            let mut spread = Rows::zeros(places.tree_c.len(), 1);
+            let own = |&t: &usize| self.tree_part(t).branch == branch;
+            if let Some(t) = places.tree_c.clone().find(own) {
+                spread.row_mut(t - first)[0] = 1.0;
+            }
+            for l in places.link_c.clone() {
+                if self.link_part(l).branch == branch {
+                    for &(t, sign) in &self.tree.links[l].1 {
+                        if places.tree_c.contains(&t) {
+                            spread.row_mut(t - first)[0] = sign;
+                        }
+                    }
+                }
+            }
+            match mass {
+                Some(mass) => spread
+                    .solve(mass)
+                    .ok_or_else(|| self.singular(self.tree_part(first)))?,
+                None => places.tree_c.clone().for_each(|t| {
+                    spread.row_mut(t - first)[0] /= self.tree_part(t).value;
+                }),
+            }
+            for t in places.tree_c.clone() {
+                lift.row_mut(k)[state_of[self.tree_part(t).branch]] = spread.row(t - first)[0];
+            }
+            for l in places.link_c.clone() {
+                let state = state_of[self.link_part(l).branch];
+                for &(t, sign) in &self.tree.links[l].1 {
+                    if places.tree_c.contains(&t) {
+                        lift.row_mut(k)[state] += sign * spread.row(t - first)[0];
+                    }
+                }
+            }
+        }
+        Ok(lift)
     }
 
     /// v = R i in the tree, i = v / R outside it.

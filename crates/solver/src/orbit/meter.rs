@@ -12,7 +12,7 @@ use num_complex::Complex64;
 use std::f64::consts::TAU;
 
 /// Nodes on 0..1 and weights of 8-point Gauss-Legendre quadrature.
-const GAUSS: [(f64, f64); 8] = [
+pub(super) const GAUSS: [(f64, f64); 8] = [
     (0.019_855_071_751_231_884, 0.050_614_268_145_188_13),
     (0.101_666_761_293_186_63, 0.111_190_517_226_687_24),
     (0.237_233_795_041_835_5, 0.156_853_322_938_943_64),
@@ -131,6 +131,22 @@ impl<const N: usize> Orbit for Solution<N> {
 
     fn pieces(&self) -> usize {
         self.pieces.len()
+    }
+
+    fn start(&self) -> Vec<f64> {
+        self.pieces.first().map_or_else(Vec::new, |p| {
+            p.start.as_slice()[..self.states].to_vec()
+        })
+    }
+
+    fn sizes(&self) -> Vec<f64> {
+        let size = |k: usize| {
+            self.pieces
+                .iter()
+                .map(|p| p.start[k].abs().max(p.end[k].abs()))
+                .fold(0.0, f64::max)
+        };
+        (0..self.states).map(size).collect()
     }
 
     fn mean_product(&self, first: Probe, second: Probe) -> f64 {

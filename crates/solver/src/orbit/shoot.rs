@@ -52,6 +52,7 @@ struct Diode {
 pub(super) struct Solution<const N: usize> {
     pub(super) period_s: f64,
     pub(super) iterations: usize,
+    pub(super) states: usize,
     pub(super) modes: Vec<SizedMode<N>>,
     pub(super) flows: Vec<Flow<N>>,
     pub(super) pieces: Vec<Piece<N>>,
@@ -134,6 +135,7 @@ where
     solver.settle().map(|(lap, iterations)| Solution {
         period_s: solver.period_s,
         iterations,
+        states: circuit.state_count(),
         modes: solver.modes,
         flows: solver.flows,
         pieces: lap.pieces,
