@@ -221,9 +221,9 @@ class Stage:
 
 
 def leg(f, t, end, x, guards, turning=None, max_step=0.1):
-    """Integrates until `end` or until one of the guards falls through zero. The end state at a
-    guard is integrated again from the last step, not read off the interpolant. Returns the
-    solution and the number of the guard. `turning` marks extremes, as the last event."""
+    """Integrates until `end` or until one of the guards falls through zero. Returns the
+    solution and the number of the guard. `turning` marks extremes, as the last event. The
+    states at events are integrated again from the step before, not read off the interpolant."""
     events = []
     for g in guards:
         def event(t, y, g=g):
@@ -238,10 +238,18 @@ def leg(f, t, end, x, guards, turning=None, max_step=0.1):
     hit = None
     if s.status == 1:
         hit = next(k for k in range(len(guards)) if len(s.t_events[k]))
-        if s.t[-1] > s.t[-2]:
-            again = solve_ivp(f, (s.t[-2], s.t[-1]), s.y[:, -2], method="DOP853", rtol=RTOL, atol=ATOL)
-            s.y[:, -1] = again.y[:, -1]
+        s.y[:, -1] = again(s, f, s.t[-1])
+    if turning is not None:
+        s.y_events[-1] = [again(s, f, t) for t in s.t_events[-1]]
     return s, hit
+
+
+def again(s, f, t):
+    """The state at t, integrated from the step before it."""
+    k = max(int(np.searchsorted(s.t, t)) - 1, 0)
+    if t <= s.t[k]:
+        return s.y[:, k]
+    return solve_ivp(f, (s.t[k], t), s.y[:, k], method="DOP853", rtol=RTOL, atol=ATOL).y[:, -1]
 
 
 def close(period, x, warm=4, rounds=40, tolerance=3e-12):
