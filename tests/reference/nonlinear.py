@@ -208,7 +208,7 @@ class Stage:
                 lambda t, y: sign * (y[0] + self.vf),
                 lambda t, y: min(above - y[0], 1e9),
                 lambda t, y: min(y[0] - below, 1e9),
-            ], None if record is None else lambda t, y: self.slope(y.tolist(), on, diode, cd))
+            ], [] if record is None else [lambda t, y: self.slope(y.tolist(), on, diode, cd)])
             if record is not None:
                 seen = [s.y[0, 0], s.y[0, -1]] + [y[0] for y in s.y_events[-1]]
                 record.append((on, diode, seen, cd))
@@ -220,9 +220,9 @@ class Stage:
         return x
 
 
-def leg(f, t, end, x, guards, turning=None, max_step=0.1):
+def leg(f, t, end, x, guards, turnings=(), max_step=0.1):
     """Integrates until `end` or until one of the guards falls through zero. Returns the
-    solution and the number of the guard. `turning` marks extremes, as the last event. The
+    solution and the number of the guard. `turnings` mark extremes, as the last events. The
     states at events are integrated again from the step before, not read off the interpolant."""
     events = []
     for g in guards:
@@ -230,8 +230,8 @@ def leg(f, t, end, x, guards, turning=None, max_step=0.1):
             return g(t, y)
         event.terminal, event.direction = True, -1
         events.append(event)
-    if turning is not None:
-        events.append(lambda t, y: turning(t, y))
+    for g in turnings:
+        events.append(lambda t, y, g=g: g(t, y))
     s = solve_ivp(f, (t, end), x, method="DOP853", rtol=RTOL, atol=ATOL, events=events, max_step=max_step)
     if s.status < 0:
         raise ArithmeticError(s.message)
@@ -239,8 +239,8 @@ def leg(f, t, end, x, guards, turning=None, max_step=0.1):
     if s.status == 1:
         hit = next(k for k in range(len(guards)) if len(s.t_events[k]))
         s.y[:, -1] = again(s, f, s.t[-1])
-    if turning is not None:
-        s.y_events[-1] = [again(s, f, t) for t in s.t_events[-1]]
+    for k in range(len(guards), len(events)):
+        s.y_events[k] = [again(s, f, t) for t in s.t_events[k]]
     return s, hit
 
 
@@ -294,9 +294,10 @@ def close(period, x, warm=4, rounds=40, tolerance=3e-12):
         x, y, res = x_new, y_new, res_new
     if np.max(np.abs(res)) > 1e-9:
         raise ArithmeticError("the period does not close")
-    if jac is None:
+    largest = lambda jac: float(np.max(np.abs(np.linalg.eigvals(jac))))
+    if jac is None or largest(jac) > 0.9:
         jac = differences(x, y)
-    return x, float(np.max(np.abs(np.linalg.eigvals(jac))))
+    return x, largest(jac)
 
 
 def solve(d):
