@@ -3,8 +3,9 @@
 #![allow(missing_docs, reason = "criterion's macros make undocumented items")]
 
 use criterion::{Criterion, criterion_group, criterion_main};
-use evenfall_engine::design::{Diode, Load};
+use evenfall_engine::design::{Capacitance, Diode, Load};
 use evenfall_engine::exchange::link;
+use evenfall_engine::sizing;
 use evenfall_engine::stage::Stage;
 use std::hint::black_box;
 
@@ -19,7 +20,7 @@ fn solves(c: &mut Criterion) {
             r_ohm: 4.0,
             x_ohm: 0.0,
         },
-        ..plain
+        ..plain.clone()
     };
     let circuit = plain.layout().circuit;
     c.bench_function("equations of one mode", |b| {
@@ -36,6 +37,22 @@ fn solves(c: &mut Criterion) {
     });
     c.bench_function("waveforms of four curves", |b| {
         b.iter(|| black_box(&plain).waveforms())
+    });
+    let mut curved = link::base();
+    curved.device.on_resistance_ohm = 0.12;
+    curved.device.capacitance = Capacitance::Junction {
+        cj0_f: 900e-12,
+        built_in_v: 0.8,
+        grading: 0.5,
+    };
+    curved.stage.coil_q = Some(200.0);
+    if let Ok((stage, _)) = sizing::sized_stage(&curved) {
+        c.bench_function("steady state with a junction capacitance", |b| {
+            b.iter(|| black_box(&stage).solve_to_harmonic(10))
+        });
+    }
+    c.bench_function("a full sizing with a junction capacitance", |b| {
+        b.iter(|| evenfall_engine::solve(black_box(&curved)))
     });
     let design = link::base();
     c.bench_function("a full sizing", |b| {

@@ -48,6 +48,8 @@ pub enum SizingError {
     Capacitance {
         /// Of the device, farads.
         device_f: f64,
+        /// Whether that is the constant capacitance of the same energy.
+        by_energy: bool,
         /// Whole shunt capacitance that the stage needs, farads.
         needed_f: f64,
         /// Highest carrier that it allows with this load and supply, hertz.
@@ -146,6 +148,7 @@ impl fmt::Display for SizingError {
             }
             Self::Capacitance {
                 device_f,
+                by_energy,
                 needed_f,
                 highest_hz,
                 load_ohm,
@@ -153,7 +156,12 @@ impl fmt::Display for SizingError {
             } => {
                 write!(
                     f,
-                    "the device's own capacitance, {:.4} pF, exceeds the {:.4} pF that the whole shunt needs; a carrier up to {:.4} MHz would do, or a drain load of about {:.4} ohm (more power or a lower supply), or a smaller device",
+                    "the device's own capacitance, {}{:.4} pF, exceeds the {:.4} pF that the whole shunt needs; a carrier up to {:.4} MHz would do, or a drain load of about {:.4} ohm (more power or a lower supply), or a smaller device",
+                    if *by_energy {
+                        "in energy equal to "
+                    } else {
+                        ""
+                    },
                     device_f * 1e12,
                     needed_f * 1e12,
                     highest_hz * 1e-6,

@@ -45,14 +45,20 @@ fn charge_and_energy_are_the_integrals_of_the_capacitance() {
                 energy += weight * c * v * h / 6.0;
             }
             let got = law.at(pair[1]).1 - law.at(pair[0]).1;
-            assert!((got / charge - 1.0).abs() < 1e-7, "law {number}, {pair:?}: {got:e} {charge:e}");
+            assert!(
+                (got / charge - 1.0).abs() < 1e-7,
+                "law {number}, {pair:?}: {got:e} {charge:e}"
+            );
             let got = law.energy_j(pair[1]) - law.energy_j(pair[0]);
             assert!(
                 (got - energy).abs() < 1e-7 * energy.abs().max(1e-3 * charge),
                 "law {number}, {pair:?}: {got:e} {energy:e}"
             );
         }
-        assert!(law.at(0.0).1.abs() < 1e-26, "law {number} holds charge at 0 V");
+        assert!(
+            law.at(0.0).1.abs() < 1e-26,
+            "law {number} holds charge at 0 V"
+        );
     }
 }
 
@@ -83,11 +89,17 @@ fn what_cannot_be_is_refused_with_its_row() {
     assert_eq!(row(&[0.0, f64::NAN, 9.0], &[3e-10, 2e-10, 1e-10]), 2);
     assert!(matches!(
         ChargeLaw::points(&[1.0], &[1e-10]),
-        Err(LawError::Count { volts: 1, farads: 1 })
+        Err(LawError::Count {
+            volts: 1,
+            farads: 1
+        })
     ));
     assert!(matches!(
         ChargeLaw::junction(1e-10, 0.8, -0.1),
-        Err(LawError::Value { what: "the grading", .. })
+        Err(LawError::Value {
+            what: "the grading",
+            ..
+        })
     ));
     let mut design = link::base();
     design.device.capacitance = Capacitance::Points {
@@ -121,9 +133,9 @@ fn a_pure_junction_leaves_power_and_currents_ideal() {
     let mut design = junction(1000e-12, 0.5, 0.5);
     design.device.on_resistance_ohm = 0.0;
     design.brief.supply_v = Some(100.0);
-    design.stage.loaded_q = 2000.0;
+    design.stage.loaded_q = 300.0;
     design.stage.feed = Feed::Choke {
-        reactance_ratio: 20_000.0,
+        reactance_ratio: 1000.0,
     };
     // The device that leaves nothing to fit: its needed size is what the refusal or the fitted
     // capacitor says, twice refined.
@@ -136,7 +148,9 @@ fn a_pure_junction_leaves_power_and_currents_ideal() {
                 }
                 factor
             }
-            Err(SizingError::Capacitance { device_f, needed_f, .. }) => needed_f / device_f - 1e-8,
+            Err(SizingError::Capacitance {
+                device_f, needed_f, ..
+            }) => needed_f / device_f - 1e-8,
             Err(error) => panic!("{error}"),
         };
         if let Capacitance::Junction { cj0_f, .. } = &mut design.device.capacitance {
@@ -150,14 +164,23 @@ fn a_pure_junction_leaves_power_and_currents_ideal() {
     let power = f.output_power_w * load / (100.0 * 100.0);
     assert!((power / 0.57680088 - 1.0).abs() < 2e-3, "P R / V^2 {power}");
     let peak_a = f.switch_peak_a / f.supply_current_a;
-    assert!((peak_a / 2.86209589 - 1.0).abs() < 3e-3, "ipk / Idc {peak_a}");
+    assert!(
+        (peak_a / 2.86209589 - 1.0).abs() < 3e-3,
+        "ipk / Idc {peak_a}"
+    );
     let peak_v = f.drain_peak_v / 100.0;
     assert!((4.3..=4.6).contains(&peak_v), "vpk / V {peak_v}");
 }
 
 #[test]
 fn a_grading_of_zero_is_a_constant_capacitance() {
-    for diode in [None, Some(Diode { forward_v: 0.7, slope_ohm: 0.05 })] {
+    for diode in [
+        None,
+        Some(Diode {
+            forward_v: 0.7,
+            slope_ohm: 0.05,
+        }),
+    ] {
         let mut curved = junction(80e-12, 0.8, 0.0);
         curved.device.on_resistance_ohm = 0.2;
         curved.device.diode = diode;
@@ -180,7 +203,10 @@ fn a_grading_of_zero_is_a_constant_capacitance() {
                 device_law: None,
                 ..built.clone()
             };
-            let (a, b) = (built.solve().expect("curved"), constant.solve().expect("flat"));
+            let (a, b) = (
+                built.solve().expect("curved"),
+                constant.solve().expect("flat"),
+            );
             close(a.figures.output_power_w, b.figures.output_power_w);
             close(a.figures.switch_peak_a, b.figures.switch_peak_a);
             close(a.figures.drain_peak_v, b.figures.drain_peak_v);
@@ -194,7 +220,10 @@ fn the_peak_rises_above_that_of_a_constant_capacitance() {
     let mut design = junction(900e-12, 0.8, 0.5);
     design.device.on_resistance_ohm = 0.12;
     let (_, reading) = sizing::sized_stage(&design).expect("sized");
-    let flat = reading.figures.constant_capacitance_peak_v.expect("a peak to compare with");
+    let flat = reading
+        .figures
+        .constant_capacitance_peak_v
+        .expect("a peak to compare with");
     assert!(reading.figures.drain_peak_v > 1.1 * flat);
     assert!(reading.balance.abs() < 1e-6);
     assert!(reading.figures.turn_on_v.abs() < 1e-4 * 48.0);
@@ -204,8 +233,12 @@ fn the_peak_rises_above_that_of_a_constant_capacitance() {
 #[test]
 fn a_device_too_large_is_offered_a_feed_coil() {
     for capacitance in [
-        Capacitance::Constant { c_f: 300e-12 },
-        Capacitance::Junction { cj0_f: 2500e-12, built_in_v: 0.8, grading: 0.5 },
+        Capacitance::Constant { c_f: 140e-12 },
+        Capacitance::Junction {
+            cj0_f: 1100e-12,
+            built_in_v: 0.8,
+            grading: 0.5,
+        },
     ] {
         let mut design = link::base();
         design.device.on_resistance_ohm = 0.1;
@@ -218,7 +251,10 @@ fn a_device_too_large_is_offered_a_feed_coil() {
         };
         let feed = refusal.offer.expect("a feed coil");
         let with = Design {
-            stage: evenfall_engine::design::StageChoice { feed, ..design.stage.clone() },
+            stage: evenfall_engine::design::StageChoice {
+                feed,
+                ..design.stage.clone()
+            },
             ..design.clone()
         };
         let (stage, _) = sizing::sized_stage(&with).expect("the feed coil on offer");
@@ -226,6 +262,10 @@ fn a_device_too_large_is_offered_a_feed_coil() {
         // And so does the carrier that it names.
         design.brief.carrier_hz = highest_hz * (1.0 - 1e-6);
         let (stage, _) = sizing::sized_stage(&design).expect("at the highest carrier");
-        assert!(stage.shunt.value < 1e-3 * stage.device_f, "{:e}", stage.shunt.value);
+        assert!(
+            stage.shunt.value < 1e-3 * stage.device_f,
+            "{:e}",
+            stage.shunt.value
+        );
     }
 }

@@ -106,7 +106,7 @@ fn frequency_impedance_and_voltage_only_scale() {
             on_resistance_ohm: a.on_resistance_ohm * z,
             fall_s: a.fall_s / f,
             device_f: 0.0,
-        device_law: None,
+            device_law: None,
             diode: a.diode.map(|d| Diode {
                 forward_v: d.forward_v * v,
                 slope_ohm: d.slope_ohm * z,
@@ -149,7 +149,7 @@ fn a_very_small_on_resistance_is_almost_ideal() {
         };
         let small = Stage {
             on_resistance_ohm: 1e-6 * ideal.load.r_ohm,
-            ..ideal
+            ..ideal.clone()
         };
         let (x, y) = (ideal.solve().expect("ideal"), small.solve().expect("small"));
         let close = |a: f64, b: f64| (a / b - 1.0).abs() < 1e-4;

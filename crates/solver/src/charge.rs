@@ -180,6 +180,11 @@ impl ChargeLaw {
         }
     }
 
+    /// Whether every derivative of the capacitance is continuous where a stage moves.
+    pub fn is_smooth(&self) -> bool {
+        matches!(self.curve, Curve::Junction { .. })
+    }
+
     /// The law with its curve `factor` times as high, what stands beside it unchanged.
     pub fn scaled(&self, factor: f64) -> Self {
         Self {
@@ -211,10 +216,7 @@ impl ChargeLaw {
                 } else {
                     cj0_f * libm::exp(-grading * libm::log(u))
                 };
-                (
-                    farad,
-                    built_in_v * (farad * u - cj0_f) / (1.0 - grading),
-                )
+                (farad, built_in_v * (farad * u - cj0_f) / (1.0 - grading))
             }
             _ => {
                 let here = self.curve_at(volt);
@@ -272,9 +274,7 @@ fn straight(from: &Knot, volt: f64) -> Knot {
         farad: from.farad + from.slope * d,
         slope: from.slope,
         coulomb: from.coulomb + charge,
-        joule: from.joule
-            + from.volt * charge
-            + d * d * (0.5 * from.farad + from.slope * d / 3.0),
+        joule: from.joule + from.volt * charge + d * d * (0.5 * from.farad + from.slope * d / 3.0),
     }
 }
 

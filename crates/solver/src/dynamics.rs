@@ -184,11 +184,7 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
             Element::Varying { law, farad } => {
                 let law = circuit.laws.get(law).map_or(f64::NAN, |_| law as f64);
                 check(law, 0.0)?;
-                (
-                    Some(Kind::Capacitor),
-                    check(farad, f64::MIN_POSITIVE)?,
-                    0.0,
-                )
+                (Some(Kind::Capacitor), check(farad, f64::MIN_POSITIVE)?, 0.0)
             }
             Element::Source { volt } => (Some(Kind::Source), check(volt, f64::MIN)?, 0.0),
             Element::Switch { ohm } => (None, 0.0, check(ohm, 0.0)?),

@@ -140,6 +140,7 @@ impl Search<'_> {
         let mut anew = false;
         for _ in 0..MOST_STEPS {
             let residual = here.amax();
+
             if residual < CURVED_MET {
                 return Ok(point);
             }

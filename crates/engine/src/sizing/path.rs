@@ -110,6 +110,7 @@ fn size_at(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingEr
         if needed_f < problem.device_f * (1.0 - 1e-9) {
             return Err(SizingError::Capacitance {
                 device_f: problem.device_f,
+                by_energy: problem.device_law.is_some(),
                 needed_f,
                 highest_hz: problem.carrier_hz * needed_f / problem.device_f,
                 load_ohm: point.load_ohm * needed_f / problem.device_f,
@@ -148,7 +149,9 @@ pub(super) fn absorbing_feed(problem: &Problem) -> Option<(f64, f64)> {
                 (stage.device_f + stage.shunt.value) / problem.device_f,
                 stage.feed.value,
             )),
-            Err(SizingError::Capacitance { needed_f, .. }) => Some((needed_f / problem.device_f, 0.0)),
+            Err(SizingError::Capacitance { needed_f, .. }) => {
+                Some((needed_f / problem.device_f, 0.0))
+            }
             Err(_) => None,
         }
     };
@@ -261,8 +264,9 @@ fn bend(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
         loaded_q: missing,
         ..bent
     };
-    let point =
-        walk(search, from, law).map_err(|stalled| SizingError::Law { share: stalled.way.bend })?;
+    let point = walk(search, from, law).map_err(|stalled| SizingError::Law {
+        share: stalled.way.bend,
+    })?;
     if missing == problem.loaded_q {
         return Ok(point);
     }

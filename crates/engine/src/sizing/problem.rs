@@ -137,7 +137,10 @@ impl Problem {
                 cj0_f,
                 built_in_v,
                 grading,
-            } => (0.0, law(ChargeLaw::junction(*cj0_f, *built_in_v, *grading))?),
+            } => (
+                0.0,
+                law(ChargeLaw::junction(*cj0_f, *built_in_v, *grading))?,
+            ),
             Capacitance::Points { v, c_f } => (0.0, law(ChargeLaw::points(v, c_f))?),
         };
         let thermal = match device.junction_to_ambient_k_per_w {
@@ -459,10 +462,14 @@ impl Problem {
             on_resistance_ohm: self.on_resistance_ohm * way.losses,
             fall_s: self.fall_s * way.losses,
             device_f,
-            device_law: self.device_law.as_ref().filter(|_| way.bend > 0.0).map(|law| {
-                law.scaled(way.bend * device_f / self.device_f)
-                    .beside((1.0 - way.bend) * device_f)
-            }),
+            device_law: self
+                .device_law
+                .as_ref()
+                .filter(|_| way.bend > 0.0)
+                .map(|law| {
+                    law.scaled(way.bend * device_f / self.device_f)
+                        .beside((1.0 - way.bend) * device_f)
+                }),
             diode: None,
             feed: coil(feed_l, self.pins.feed),
             shunt: capacitor(shunt_f.max(0.0), self.pins.shunt.and_then(|p| p.esr_ohm)),

@@ -10,6 +10,7 @@ mod read;
 mod step;
 
 use super::{ClockStep, OrbitError};
+use crate::charge::ChargeLaw;
 use crate::circuit::{Circuit, Element};
 use crate::dynamics::{self, Rows};
 use nalgebra::{DMatrix, DVector};
@@ -36,7 +37,10 @@ const SETTLED: f64 = 1e-10;
 const ACCEPTED: f64 = 1e-8;
 /// Last term of a step's polynomial, relative to the state: the end of the step is better by
 /// about its square.
-const LAST_TERM: f64 = 2e-5;
+const LAST_TERM: f64 = 3e-6;
+/// How much less where the law has knots: there the terms die out slowly, and the last one says
+/// little of those that follow.
+const KNOTTED: f64 = 1e-2;
 /// The same of the curve itself, whatever follows from it.
 const WORST_TERM: f64 = 1e-3;
 /// Rounding of a guard, relative to its largest term.
@@ -98,6 +102,7 @@ struct Solver<'a> {
     sizes: Vec<f64>,
     /// Multiple of the bounds on the last term: the first periods need not be fine.
     loose: f64,
+    knots: f64,
 }
 
 struct Lap {
@@ -176,6 +181,11 @@ pub(super) fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Solution, 
         plans: clock.iter().map(|_| Plan::default()).collect(),
         sizes: typical.sizes(),
         loose: LOOSE,
+        knots: if circuit.laws.iter().all(ChargeLaw::is_smooth) {
+            1.0
+        } else {
+            KNOTTED
+        },
     };
     let (lap, iterations) = solver.settle(start)?;
     Ok(Solution {
@@ -277,7 +287,8 @@ impl Solver<'_> {
         if let Some(step) = mode.steps.iter().find(|s| s.length == length) {
             return Ok(step.clone());
         }
-        let step = Step::new(&mode.a, &mode.b, &mode.lift, &self.varying, length).ok_or(OrbitError::Overflow)?;
+        let step = Step::new(&mode.a, &mode.b, &mode.lift, &self.varying, length)
+            .ok_or(OrbitError::Overflow)?;
         let step = Rc::new(step);
         mode.steps.push(step.clone());
         Ok(step)
@@ -422,7 +433,9 @@ impl Solver<'_> {
     fn coarseness(&self, mode: usize, length: f64, start: &DVector<f64>, nodes: &Nodes) -> f64 {
         let n = start.len();
         let last = DVector::from_fn(n, |k, _| {
-            let sum: f64 = (0..S).map(|i| SPREAD[i + 1] * nodes.states[i * n + k]).sum();
+            let sum: f64 = (0..S)
+                .map(|i| SPREAD[i + 1] * nodes.states[i * n + k])
+                .sum();
             (sum + SPREAD[0] * start[k]) / (1u64 << (2 * S - 1)) as f64
         });
         let added = &self.modes[mode].a * &last * length;
@@ -430,7 +443,7 @@ impl Solver<'_> {
             .map(|k| {
                 let end = nodes.states[(S - 1) * n + k].abs();
                 let size = self.sizes[k].max(start[k].abs()).max(end);
-                let bound = LAST_TERM * size * self.loose + f64::MIN_POSITIVE;
+                let bound = LAST_TERM * size * self.loose * self.knots + f64::MIN_POSITIVE;
                 let worst = WORST_TERM * size * self.loose.sqrt() + f64::MIN_POSITIVE;
                 (added[k].abs() / bound).max(last[k].abs() / worst)
             })
@@ -448,7 +461,9 @@ impl Solver<'_> {
         ahead: &mut Vec<(f64, Option<Vec<f64>>)>,
     ) {
         let m = self.varying.len();
-        let halvings = (libm::log2(coarse.min(COARSEST)) / (S + 1) as f64).ceil().max(1.0);
+        let halvings = (libm::log2(coarse.min(COARSEST)) / (S + 1) as f64)
+            .ceil()
+            .max(1.0);
         let guess = |from: f64, share: f64| {
             tried.map(|nodes| {
                 let value = |at: usize| {

@@ -134,9 +134,9 @@ impl<const N: usize> Orbit for Solution<N> {
     }
 
     fn start(&self) -> Vec<f64> {
-        self.pieces.first().map_or_else(Vec::new, |p| {
-            p.start.as_slice()[..self.states].to_vec()
-        })
+        self.pieces
+            .first()
+            .map_or_else(Vec::new, |p| p.start.as_slice()[..self.states].to_vec())
     }
 
     fn sizes(&self) -> Vec<f64> {

@@ -162,14 +162,14 @@ impl<const N: usize> Solver<'_, N> {
         for iteration in 1..=MOST_ITERATIONS {
             self.flows.truncate(self.kept.len());
             let lap = self.lap(&x, conducting, true)?;
-            residual = change(&x, &lap);
+            residual = self.distance(&x, &lap.end, &lap);
             let repeats = lap.conducting == conducting;
             conducting = lap.conducting;
             if residual <= SETTLED && repeats {
                 return Ok((lap, iteration));
             }
             let next = newton(&x, &lap, &self.masses)?;
-            let moved = distance(&x, &next, &lap);
+            let moved = self.distance(&x, &next, &lap);
             if residual <= ACCEPTED && (moved <= ACCEPTED || iteration > PATIENCE) && repeats {
                 return Ok((lap, iteration));
             }
@@ -183,6 +183,32 @@ impl<const N: usize> Solver<'_, N> {
             iterations: MOST_ITERATIONS,
             residual,
         })
+    }
+
+    /// The greatest magnitude of each state at the ends of the pieces; where that is next to
+    /// nothing, a millionth of what would hold the energy of the others.
+    fn sizes(&self, lap: &Lap<N>) -> State<N> {
+        const TRIFLE: f64 = 1e-6;
+        let mut size = State::<N>::zeros();
+        for piece in &lap.pieces {
+            for k in 0..N {
+                size[k] = size[k].max(piece.start[k].abs()).max(piece.end[k].abs());
+            }
+        }
+        let energy = (0..N).map(|k| self.masses[k] * size[k] * size[k]);
+        let root = TRIFLE * energy.fold(0.0, f64::max).sqrt();
+        for k in (0..N).filter(|&k| self.masses[k] > 0.0) {
+            size[k] = size[k].max(root / self.masses[k].sqrt());
+        }
+        size
+    }
+
+    fn distance(&self, x: &State<N>, y: &State<N>, lap: &Lap<N>) -> f64 {
+        let size = self.sizes(lap);
+        (0..N)
+            .filter(|&k| size[k] > 0.0)
+            .map(|k| (x[k] - y[k]).abs() / size[k])
+            .fold(0.0, f64::max)
     }
 
     fn mode(&mut self, conducting: u32) -> Result<usize, OrbitError> {
@@ -441,26 +467,4 @@ where
     } else {
         Err(OrbitError::Undetermined)
     }
-}
-
-fn sizes<const N: usize>(lap: &Lap<N>) -> State<N> {
-    let mut size = State::<N>::zeros();
-    for piece in &lap.pieces {
-        for k in 0..N {
-            size[k] = size[k].max(piece.start[k].abs()).max(piece.end[k].abs());
-        }
-    }
-    size
-}
-
-fn change<const N: usize>(x: &State<N>, lap: &Lap<N>) -> f64 {
-    distance(x, &lap.end, lap)
-}
-
-fn distance<const N: usize>(x: &State<N>, y: &State<N>, lap: &Lap<N>) -> f64 {
-    let size = sizes(lap);
-    (0..N)
-        .filter(|&k| size[k] > 0.0)
-        .map(|k| (x[k] - y[k]).abs() / size[k])
-        .fold(0.0, f64::max)
 }

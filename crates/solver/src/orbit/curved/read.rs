@@ -1,7 +1,7 @@
 //! Reading a curved orbit: every quantity is the polynomial through a step's nodes.
 
 use super::radau::{NODES, S, SPREAD, TABLE};
-use super::step::spread;
+use super::step::{Step, spread};
 use super::{Piece, Solution, value};
 use crate::orbit::meter::GAUSS;
 use crate::orbit::{Extremes, Orbit, Probe};
@@ -63,6 +63,56 @@ impl Solution {
     fn values(&self, piece: &Piece, probe: Probe) -> [f64; S + 1] {
         let row = self.row(piece, probe);
         std::array::from_fn(|k| value(row, &piece.states.column(k)))
+    }
+
+    /// The state at `share` of a step.
+    fn state_within(&self, piece: &Piece, share: f64) -> Option<DVector<f64>> {
+        if share <= 0.0 || share >= 1.0 {
+            let column = if share <= 0.0 { 0 } else { S };
+            return Some(piece.states.column(column).into_owned());
+        }
+        let mode = &self.modes[piece.mode];
+        let length = share * piece.length;
+        let step = Step::new(&mode.a, &mode.b, &mode.lift, &self.varying, length)?;
+        let start = piece.states.column(0).into_owned();
+        let nodes = step.solve(&self.varying, &start, None, &self.sizes())?;
+        Some(nodes.end(start.len()).into_owned())
+    }
+
+    /// The extreme near `share` of a step: a step that ends there knows better than the
+    /// polynomial across, and its slope says where to look next.
+    fn turn_within(&self, piece: &Piece, probe: Probe, share: f64, sign: f64) -> Option<f64> {
+        const MOST_STEPS: usize = 6;
+        const CLOSE: f64 = 1e-7;
+        let row = self.row(piece, probe);
+        let constant = row.last().copied().unwrap_or(0.0);
+        let look = |share: f64| {
+            let state = self.state_within(piece, share)?;
+            let slopes = self.slopes(piece.mode, &state);
+            Some((value(row, &state), value(row, &slopes) - constant))
+        };
+        let (mut at, (mut best, mut rate)) = (share, look(share)?);
+        let mut next = (at + 0.01 * sign * rate.signum()).clamp(0.0, 1.0);
+        for _ in 0..MOST_STEPS {
+            let Some((there, slope)) = look(next) else {
+                break;
+            };
+            if sign * there > sign * best {
+                best = there;
+            }
+            let ahead = next - slope * (next - at) / (slope - rate);
+            (at, rate, next) = (next, slope, ahead.clamp(0.0, 1.0));
+            if !((next - at).abs() > CLOSE) {
+                break;
+            }
+        }
+        Some(best)
+    }
+
+    fn slopes(&self, mode: usize, state: &DVector<f64>) -> DVector<f64> {
+        let mode = &self.modes[mode];
+        let free = &mode.a * state + &mode.b;
+        spread(&self.varying, &mode.lift, state, &free)
     }
 
     fn integral(&self, of: impl Fn(&Piece) -> [f64; S + 1]) -> f64 {
@@ -127,15 +177,21 @@ impl Orbit for Solution {
             greatest: f64::NEG_INFINITY,
             greatest_at_s: 0.0,
         };
-        for piece in &self.pieces {
+        let (mut least, mut greatest) = (None, None);
+        for (number, piece) in self.pieces.iter().enumerate() {
             let values = self.values(piece, probe);
             let mut look = |share: f64| {
-                let (value, at) = (between(&values, share), piece.start_s + share * piece.length);
+                let (value, at) = (
+                    between(&values, share),
+                    piece.start_s + share * piece.length,
+                );
                 if value < found.least {
                     (found.least, found.least_at_s) = (value, at);
+                    least = Some((number, share));
                 }
                 if value > found.greatest {
                     (found.greatest, found.greatest_at_s) = (value, at);
+                    greatest = Some((number, share));
                 }
                 value
             };
@@ -144,10 +200,28 @@ impl Orbit for Solution {
             for k in 1..LOOKS {
                 let (a, b, c) = (grid[k - 1], grid[k], grid[k + 1]);
                 if (b - a) * (c - b) < 0.0 {
-                    turn(&values, (k - 1) as f64, (k + 1) as f64).map(&mut look);
+                    look(turn(&values, (k - 1) as f64, (k + 1) as f64));
                 }
             }
         }
+        // On a border it may lie on either side.
+        let better = |at: Option<(usize, f64)>, sign: f64| {
+            let (number, share) = at?;
+            let beyond = if share >= 1.0 {
+                self.pieces.get(number + 1).map(|p| (p, 0.0))
+            } else if share <= 0.0 && number > 0 {
+                self.pieces.get(number - 1).map(|p| (p, 1.0))
+            } else {
+                None
+            };
+            [Some((&self.pieces[number], share)), beyond]
+                .into_iter()
+                .flatten()
+                .filter_map(|(piece, share)| self.turn_within(piece, probe, share, sign))
+                .max_by(|a, b| (sign * a).total_cmp(&(sign * b)))
+        };
+        found.least = better(least, -1.0).unwrap_or(found.least);
+        found.greatest = better(greatest, 1.0).unwrap_or(found.greatest);
         found
     }
 
@@ -158,8 +232,7 @@ impl Orbit for Solution {
             // Parts short enough for eight nodes at the highest harmonic.
             let turns = omega * piece.length * count as f64;
             let parts = libm::ceil(turns / 4.0).max(1.0) as usize;
-            let values: Vec<[f64; S + 1]> =
-                probes.iter().map(|&p| self.values(piece, p)).collect();
+            let values: Vec<[f64; S + 1]> = probes.iter().map(|&p| self.values(piece, p)).collect();
             for part in 0..parts {
                 for (node, weight) in GAUSS {
                     let share = (part as f64 + node) / parts as f64;
@@ -186,9 +259,7 @@ impl Orbit for Solution {
         };
         let row = self.row(piece, probe);
         let end = DVector::from_column_slice(piece.states.column(S).as_slice());
-        let mode = &self.modes[piece.mode];
-        let free = &mode.a * &end + &mode.b;
-        let slopes = spread(&self.varying, &mode.lift, &end, &free);
+        let slopes = self.slopes(piece.mode, &end);
         let constant = row.last().copied().unwrap_or(0.0);
         (value(row, &end), value(row, &slopes) - constant)
     }
@@ -200,8 +271,7 @@ impl Orbit for Solution {
         let mut index = 0;
         for (number, piece) in self.pieces.iter().enumerate() {
             let last = number + 1 == self.pieces.len();
-            let values: Vec<[f64; S + 1]> =
-                probes.iter().map(|&p| self.values(piece, p)).collect();
+            let values: Vec<[f64; S + 1]> = probes.iter().map(|&p| self.values(piece, p)).collect();
             while index <= count && (last || index as f64 * step < piece.start_s + piece.length) {
                 let share = (index as f64 * step - piece.start_s) / piece.length;
                 for (samples, values) in samples.iter_mut().zip(&values) {
@@ -232,10 +302,14 @@ impl Orbit for Solution {
 }
 
 /// Where the polynomial turns between two looks (in units of a look), by golden section.
-fn turn(values: &[f64; S + 1], from: f64, to: f64) -> Option<f64> {
+fn turn(values: &[f64; S + 1], from: f64, to: f64) -> f64 {
     const GOLDEN: f64 = 0.618_033_988_749_894_9;
     let at = |look: f64| between(values, look / LOOKS as f64);
-    let sign = if at(0.5 * (from + to)) > at(from) { 1.0 } else { -1.0 };
+    let sign = if at(0.5 * (from + to)) > at(from) {
+        1.0
+    } else {
+        -1.0
+    };
     let (mut low, mut high) = (from, to);
     for _ in 0..MOST_HALVINGS {
         let (a, b) = (high - GOLDEN * (high - low), low + GOLDEN * (high - low));
@@ -245,5 +319,5 @@ fn turn(values: &[f64; S + 1], from: f64, to: f64) -> Option<f64> {
             low = a;
         }
     }
-    Some(0.5 * (low + high) / LOOKS as f64)
+    0.5 * (low + high) / LOOKS as f64
 }
