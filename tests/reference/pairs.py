@@ -12,11 +12,9 @@ feed coils' mutual inductance is feed_coupling * sqrt(la * lb), currents from su
 aiding. Sides are exactly equal where (number // 3) % 3 == 0.
 
 number % 5 in 3, 4: stacked. Nodes s1 ... sn = drain above one another, switch k between s(k-1)
-and s(k), s0 ground. The lowest switch is clocked. Switch k > 1 conducts through its resistance
-while s(k-1) is below clamp_v[k-2] and is open while it is above. Where both of these drive the
-node back to its clamp, the switch holds the node there and carries what that takes, between
-nothing and the full current of its resistance: the limit of ever faster switching. That happens
-for a moment whenever a drain comes back down to where its switch had opened.
+and s(k), s0 ground. The lowest switch is clocked. Switch k > 1 has its gate at a
+fixed voltage: nothing flows while s(k-1) is above clamp_v[k-2]; below, the smaller of siemens[k-2]
+times what it lies below and of the current of its resistance.
 
 All harmonics are amplitudes. Arrays of a stacked circuit run from the ground up.
 
@@ -119,6 +117,7 @@ def stacked(number, dice, log):
         "switches": n,
         "duty": dice.uniform(0.35, 0.6),
         "on_resistance_ohm": [on * x for x in weights],
+        "siemens": [dice.uniform(0.5, 3.0) / (on * x) for x in weights[1:]],
         "clamp_v": [k / n * 3.2 * v * dice.uniform(0.85, 1.15) for k in range(1, n)],
         "ground_c_f": ground,
         "across_c_f": across,
@@ -291,13 +290,13 @@ class Differential(Circuit):
         }, y, (q[0] - q[1] - q[2]) / q[0]
 
 
-OPEN, HOLD, ON = 0, 1, 2
+OPEN, GATED, ON = 0, 1, 2
 
 
 class Stacked(Circuit):
     """State: the nodes from s1 to the drain, the shunt's plates, the feed current, the series
-    capacitor's voltage, the series current. Every mode of the switches (open, holding the lower
-    node at its clamp, or on) is x' = a x + b."""
+    capacitor's voltage, the series current. Every mode of the switches (open, carrying what its gate lets
+    through, or on) is x' = a x + b."""
 
     def __init__(self, c):
         super().__init__(c)
@@ -306,6 +305,7 @@ class Stacked(Circuit):
         self.opens = TURN * c["duty"]
         self.ron = [r / self.r for r in c["on_resistance_ohm"]]
         self.clamp = [v / self.v for v in c["clamp_v"]]
+        self.gm = [g * self.r for g in c["siemens"]]
         self.c1, self.rc1 = self.cap(c["shunt_c_f"]), c["shunt_esr_ohm"] / self.r
         self.l1, self.r1 = self.coil(c["feed_l_h"]), c["feed_esr_ohm"] / self.r
         nodes = np.zeros((n, n))
@@ -338,44 +338,31 @@ class Stacked(Circuit):
         for k in range(n):
             if mode[k] == ON:
                 rows[k] = self.d[k] / self.ron[k]
+        shifts = np.zeros(n)
+        for k in range(1, n):
+            if mode[k] == GATED:
+                rows[k, k - 1] = -self.gm[k - 1]
+                shifts[k] = self.gm[k - 1] * self.clamp[k - 1]
         # A switch current leaves its upper node and enters its lower one.
         given -= self.d[:, :n].T @ rows
-        held = [k for k in range(n) if mode[k] == HOLD]
         inverse = np.linalg.inv(self.nodes)
-        if held:
-            low = [k - 1 for k in held]
-            into = -self.d[held, :n].T
-            rows[held] = -np.linalg.solve((inverse @ into)[low], (inverse @ given)[low])
-            given = given + into @ rows[held]
         a, b = np.zeros((size, size)), np.zeros(size)
         a[:n] = inverse @ given
-        for k in held:
-            a[k - 1] = 0
+        b[:n] = -inverse @ (self.d[:, :n].T @ shifts)
         a[sh, n - 1], a[sh, sh] = 1 / self.rc1 / self.c1, -1 / self.rc1 / self.c1
         a[i1, n - 1], a[i1, i1], b[i1] = -1 / self.l1, -self.r1 / self.l1, 1 / self.l1
         a[vc, i2] = 1 / self.c2
         a[i2, n - 1], a[i2, vc], a[i2, i2] = 1 / self.l2, -1 / self.l2, -(self.r2 + self.rc2 + 1) / self.l2
-        self.modes[key] = a, b, rows
+        self.modes[key] = a, b, rows, shifts
         return self.modes[key]
 
-    def settle(self, x, mode, k):
-        """The mode of switch k whose lower node is at its clamp: what both of on and open do to
-        the node decides."""
-        rate = {}
-        for m in (OPEN, ON):
-            a, b, _ = self.matrices(mode[:k] + [m] + mode[k + 1 :])
-            rate[m] = a[k - 1] @ x[: self.size] + b[k - 1]
-        if rate[ON] < 0 and rate[OPEN] < 0:
-            return ON
-        if rate[ON] > 0 and rate[OPEN] > 0:
-            return OPEN
-        if rate[ON] > 0:
-            return HOLD
-        raise ArithmeticError("a node at its clamp may go either way")
+    def spare(self, k, y):
+        """How much more the gate of switch k lets through than its resistance does."""
+        return self.gm[k - 1] * (self.clamp[k - 1] - y[k - 1]) - self.d[k] @ y[: self.size] / self.ron[k]
 
-    def integrals(self, t, x, rows):
+    def integrals(self, t, x, rows, shifts):
         n = self.n
-        i_sw = rows @ x
+        i_sw = rows @ x + shifts
         across = self.d @ x
         ic = (x[n - 1] - x[n]) / self.rc1
         i1, i2 = x[n + 1], x[n + 3]
@@ -386,8 +373,8 @@ class Stacked(Circuit):
         x = np.array(x0) if record is None else np.concatenate([x0, np.zeros(6)])
         mode = [OPEN] * self.n
         for k in range(1, self.n):
-            gap = x[k - 1] - self.clamp[k - 1]
-            mode[k] = HOLD if abs(gap) < 1e-9 else ON if gap < 0 else OPEN
+            if x[k - 1] < self.clamp[k - 1]:
+                mode[k] = ON if self.spare(k, x) > 0 else GATED
         x = self.stretch(0.0, self.opens, x, ON, mode, record)
         return self.stretch(self.opens, TURN, x, OPEN, mode, record)
 
@@ -395,28 +382,27 @@ class Stacked(Circuit):
         n, size = self.n, self.size
         mode[0] = lowest
         while t < end - 1e-13:
-            for _ in range(n):
-                for k in range(1, n):
-                    if mode[k] == HOLD:
-                        mode[k] = self.settle(x, mode, k)
-            a, b, rows = self.matrices(mode)
+            a, b, rows, shifts = self.matrices(mode)
             if record is None:
                 f = lambda t, y: a @ y + b
             else:
                 record["modes"].append(tuple(mode))
                 def f(t, y):
                     y = y[:size]
-                    return np.concatenate([a @ y + b, self.integrals(t, y, rows)])
+                    return np.concatenate([a @ y + b, self.integrals(t, y, rows, shifts)])
             guards, moves = [], []
             for k in range(1, n):
-                if mode[k] == HOLD:
-                    spare = self.d[k] / self.ron[k] - rows[k]
-                    guards += [lambda t, y, r=rows[k]: r @ y[:size], lambda t, y, r=spare: r @ y[:size]]
+                room = lambda t, y, k=k: self.clamp[k - 1] - y[k - 1]
+                spare = lambda t, y, k=k: self.spare(k, y)
+                if mode[k] == GATED:
+                    guards += [room, lambda t, y, spare=spare: -spare(t, y)]
                     moves += [(k, OPEN), (k, ON)]
+                elif mode[k] == ON:
+                    guards.append(spare)
+                    moves.append((k, GATED))
                 else:
-                    sign = 1.0 if mode[k] == ON else -1.0
-                    guards.append(lambda t, y, k=k, sign=sign: sign * (self.clamp[k - 1] - y[k - 1]))
-                    moves.append((k, None))
+                    guards.append(lambda t, y, room=room: -room(t, y))
+                    moves.append((k, GATED))
             # The drain turns, and the voltage across each switch.
             watched = [] if record is None else [np.eye(n, size)[n - 1]] + [self.d[k] for k in range(n)]
             turnings = [lambda t, y, r=r @ a, s=r @ b: r @ y[:size] + s for r in watched]
@@ -427,7 +413,7 @@ class Stacked(Circuit):
             t, x = s.t[-1], s.y[:, -1]
             if hit is not None:
                 k, m = moves[hit]
-                mode[k] = self.settle(x, mode, k) if m is None else m
+                mode[k] = m
         return x
 
     def figures(self, x):
@@ -444,7 +430,7 @@ class Stacked(Circuit):
             "switch_peaks_v": [p * v for p in record["peaks"][1:]],
             "turn_on_v": y[self.n - 1] * v,
             "lowest_switch_rms_a": math.sqrt(q[3]) * i,
-            "holds": sum(HOLD in m for m in record["modes"]),
+            "gated": sum(GATED in m for m in record["modes"]),
         }, y, (q[0] - q[1] - q[2]) / q[0]
 
 
@@ -484,7 +470,7 @@ def check(count):
         want = stored[number]["expect"]
         v, r = circuit["supply_v"], circuit["load_ohm"]
         for key, value in want.items():
-            if key == "holds":
+            if key == "gated":
                 continue
             scale = {"_w": want["supply_power_w"], "_v": v, "_a": v / r}[key[-2:]]
             if not np.all(np.abs(np.subtract(got[key], value)) <= 1e-7 * scale):

@@ -65,6 +65,25 @@ pub enum Element {
         /// Slope resistance, ohms (0 for none).
         ohm: f64,
     },
+    /// The channel of a switch whose gate stands at a fixed voltage, wide open: a resistance.
+    /// Driven by the [`Element::Follower`] beside it.
+    Channel {
+        /// On-resistance, ohms.
+        ohm: f64,
+    },
+    /// The same channel while its gate holds the lower node: the current that the gate lets
+    /// through, `siemens` for each volt that the lower node lies below the clamp. Nothing flows
+    /// while that is above it, and the channel's resistance limits it.
+    Follower {
+        /// Amperes per volt.
+        siemens: f64,
+        /// Branch number of a capacitor whose voltage is that of the lower node.
+        node: usize,
+        /// Gate supply less threshold, volts.
+        clamp_v: f64,
+        /// Branch number of the channel.
+        channel: usize,
+    },
 }
 
 impl Element {
@@ -72,7 +91,11 @@ impl Element {
     pub fn is_switching(&self) -> bool {
         matches!(
             self,
-            Self::Switch { .. } | Self::Fall { .. } | Self::Diode { .. }
+            Self::Switch { .. }
+                | Self::Fall { .. }
+                | Self::Diode { .. }
+                | Self::Channel { .. }
+                | Self::Follower { .. }
         )
     }
 }

@@ -86,6 +86,7 @@ enum Kind {
     Capacitor,
     Resistor,
     Inductor,
+    /// A current that states determine: a falling one, or a follower's.
     Fall,
 }
 
@@ -187,7 +188,10 @@ fn parts(circuit: &Circuit, conducting: u32) -> Result<Vec<Part>, DynamicsError>
                 (Some(Kind::Capacitor), check(farad, f64::MIN_POSITIVE)?, 0.0)
             }
             Element::Source { volt } => (Some(Kind::Source), check(volt, f64::MIN)?, 0.0),
-            Element::Switch { ohm } => (None, 0.0, check(ohm, 0.0)?),
+            Element::Switch { ohm } | Element::Channel { ohm } => (None, 0.0, check(ohm, 0.0)?),
+            Element::Follower { siemens, .. } => {
+                (Some(Kind::Fall), check(siemens, f64::MIN_POSITIVE)?, 0.0)
+            }
             Element::Fall { second, .. } => {
                 (Some(Kind::Fall), check(second, f64::MIN_POSITIVE)?, 0.0)
             }

@@ -7,12 +7,16 @@
 
 mod curved;
 mod flow;
+mod guards;
 mod meter;
+mod mirror;
 mod shoot;
 
 use crate::circuit::Circuit;
 use crate::dynamics::DynamicsError;
+use mirror::{Halved, Mirror};
 use num_complex::Complex64;
+use std::f64::consts::TAU;
 use std::fmt;
 
 /// What can be read off a solved circuit.
@@ -58,6 +62,8 @@ pub enum OrbitError {
         /// The most it holds.
         most: usize,
     },
+    /// The two sides of the circuit do not take each other's place.
+    Sides,
     /// A clock step of no or unending duration.
     Clock {
         /// The duration at fault, seconds.
@@ -99,6 +105,7 @@ impl fmt::Display for OrbitError {
             Self::Clock { duration_s } => {
                 write!(f, "a clock step of {duration_s} s cannot be solved")
             }
+            Self::Sides => write!(f, "the two sides of the circuit are not alike"),
             Self::Undetermined => {
                 write!(
                     f,
@@ -135,6 +142,12 @@ impl From<DynamicsError> for OrbitError {
     }
 }
 
+/// The piece of an orbit that ends nearest to a time.
+fn ending<P>(pieces: &[P], time_s: f64, end_s: impl Fn(&P) -> f64) -> Option<&P> {
+    let gap = |piece: &P| (end_s(piece) - time_s).abs();
+    pieces.iter().rev().min_by(|a, b| gap(a).total_cmp(&gap(b)))
+}
+
 /// A solved periodic state. The period starts with the first clock step.
 pub trait Orbit {
     /// The period, seconds.
@@ -154,9 +167,18 @@ pub trait Orbit {
     /// Lowest and highest value.
     fn extremes(&self, probe: Probe) -> Extremes;
     /// Complex Fourier coefficients 0..=count of each quantity: mean of x(t) exp(-j k w t).
-    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>>;
+    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>> {
+        self.fourier(probes, count, TAU / self.period_s())
+    }
+    /// The same means at multiples of any angular frequency, radians per second.
+    fn fourier(&self, probes: &[Probe], count: usize, omega: f64) -> Vec<Vec<Complex64>>;
+    /// Value and slope (per second) just before the clock's instant nearest to a time, seconds
+    /// from the start of the period.
+    fn before(&self, probe: Probe, time_s: f64) -> (f64, f64);
     /// Value and slope (per second) just before the period ends.
-    fn before_end(&self, probe: Probe) -> (f64, f64);
+    fn before_end(&self, probe: Probe) -> (f64, f64) {
+        self.before(probe, self.period_s())
+    }
     /// `count + 1` samples of each quantity at equal steps from the period's start to its end.
     fn samples(&self, probes: &[Probe], count: usize) -> Vec<Vec<f64>>;
     /// Fraction of the period in which a switching branch conducts.
@@ -174,17 +196,41 @@ pub const MOST_STATES: usize = 32;
 /// # Errors
 /// See [`OrbitError`].
 pub fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Box<dyn Orbit>, OrbitError> {
+    solve_with(circuit, clock, None)
+}
+
+/// The periodic steady state of a circuit with two like sides half a period apart, from the
+/// clock of the first half. For each branch `partners` has the branch whose place it takes in
+/// the second half, and the sign of its voltage and current there.
+///
+/// # Errors
+/// See [`OrbitError`].
+pub fn solve_halves(
+    circuit: &Circuit,
+    clock: &[ClockStep],
+    partners: &[(usize, f64)],
+) -> Result<Box<dyn Orbit>, OrbitError> {
+    let mirror = Mirror::of(circuit, partners).ok_or(OrbitError::Sides)?;
+    let half = solve_with(circuit, clock, Some(&mirror))?;
+    Ok(Box::new(Halved { half, mirror }))
+}
+
+fn solve_with(
+    circuit: &Circuit,
+    clock: &[ClockStep],
+    mirror: Option<&Mirror>,
+) -> Result<Box<dyn Orbit>, OrbitError> {
     if circuit.varying().next().is_some() {
-        return Ok(Box::new(curved::solve(circuit, clock)?));
+        return Ok(Box::new(curved::solve(circuit, clock, mirror)?));
     }
     let states = circuit.state_count();
     macro_rules! sized {
         ($($n:literal),*) => {
             match states + 1 {
-                $(n if n <= $n => Ok(Box::new(shoot::solve::<$n>(circuit, clock)?) as Box<dyn Orbit>),)*
+                $(n if n <= $n => Ok(Box::new(shoot::solve::<$n>(circuit, clock, mirror)?) as Box<dyn Orbit>),)*
                 _ => Err(OrbitError::TooManyStates { states, most: MOST_STATES }),
             }
         };
     }
-    sized!(5, 8, 33)
+    sized!(5, 9, 33)
 }

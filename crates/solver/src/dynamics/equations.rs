@@ -4,7 +4,7 @@ use super::flux::Flux;
 use super::rows::Rows;
 use super::tree::{List, Tree};
 use super::{DynamicsError, Kind, Mode, Part};
-use crate::circuit::Circuit;
+use crate::circuit::{Circuit, Element};
 use nalgebra::DMatrix;
 use std::ops::Range;
 
@@ -93,7 +93,21 @@ impl Equations<'_> {
             {
                 return Err(self.singular(self.link_part(l)));
             }
-            link_i.row_mut(l)[state_of[self.link_part(l).branch]] = 1.0;
+            let part = self.link_part(l);
+            if let Element::Follower { node, clamp_v, .. } =
+                self.circuit.branches[part.branch].element
+            {
+                let node = &self.circuit.branches[node];
+                for (t, sign) in self.tree.routes.between(node.from, node.to) {
+                    if !places.tree_c.contains(&t) && !places.tree_e.contains(&t) {
+                        return Err(self.singular(part));
+                    }
+                    link_i.add(l, tree_v.row(t), -sign * part.value);
+                }
+                link_i.row_mut(l)[states] += part.value * clamp_v;
+            } else {
+                link_i.row_mut(l)[state_of[part.branch]] = 1.0;
+            }
         }
         self.resistors(&places, &mut tree_v, &mut link_i)?;
 
@@ -152,7 +166,9 @@ impl Equations<'_> {
         flux.slopes(self, &places, &state_of, &tree_v, &mut slopes)?;
         for l in places.link_fall.clone() {
             let state = state_of[self.link_part(l).branch];
-            slopes.row_mut(state)[state + 1] = 1.0;
+            if state < states {
+                slopes.row_mut(state)[state + 1] = 1.0;
+            }
         }
         for t in places.tree_l.clone() {
             let state = state_of[self.tree_part(t).branch];

@@ -31,6 +31,11 @@ impl Rows {
         self.data.len() / self.width.max(1)
     }
 
+    /// Number of coefficients of a row.
+    pub fn width(&self) -> usize {
+        self.width
+    }
+
     /// Whether there is none.
     pub fn is_empty(&self) -> bool {
         self.data.is_empty()

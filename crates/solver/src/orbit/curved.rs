@@ -9,6 +9,8 @@ mod radau;
 mod read;
 mod step;
 
+use super::guards::{self, Guard};
+use super::mirror::Mirror;
 use super::{ClockStep, OrbitError};
 use crate::charge::ChargeLaw;
 use crate::circuit::{Circuit, Element};
@@ -54,6 +56,7 @@ struct Mode {
     b: DVector<f64>,
     lift: DMatrix<f64>,
     rows: dynamics::Mode,
+    guards: Vec<Guard>,
     steps: Vec<Rc<Step>>,
 }
 
@@ -85,16 +88,12 @@ pub(super) struct Solution {
     jump_energy_j: f64,
 }
 
-struct Diode {
-    bit: u32,
-    branch: usize,
-    forward_v: f64,
-}
-
 struct Solver<'a> {
     circuit: &'a Circuit,
     clock: &'a [ClockStep],
-    diodes: Vec<Diode>,
+    /// Bits of the elements that switch by themselves.
+    own_bits: u32,
+    mirror: Option<&'a Mirror>,
     varying: Vec<Varying>,
     masses: Vec<f64>,
     modes: Vec<Mode>,
@@ -137,22 +136,14 @@ fn constant(circuit: &Circuit) -> Circuit {
     typical
 }
 
-pub(super) fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Solution, OrbitError> {
-    let typical = super::solve(&constant(circuit), clock)?;
+pub(super) fn solve(
+    circuit: &Circuit,
+    clock: &[ClockStep],
+    mirror: Option<&Mirror>,
+) -> Result<Solution, OrbitError> {
+    let typical = super::solve_with(&constant(circuit), clock, mirror)?;
     let states = circuit.state_count();
     let switching = circuit.switching_branches();
-    let diodes = switching
-        .iter()
-        .enumerate()
-        .filter_map(|(k, &branch)| match circuit.branches[branch].element {
-            Element::Diode { forward_v, .. } => Some(Diode {
-                bit: 1 << k,
-                branch,
-                forward_v,
-            }),
-            _ => None,
-        })
-        .collect();
     let (capacitors, inductors) = circuit.state_branches();
     let (mut masses, mut varying) = (vec![0.0; states], Vec::new());
     for (state, &branch) in capacitors.iter().chain(&inductors).enumerate() {
@@ -174,7 +165,8 @@ pub(super) fn solve(circuit: &Circuit, clock: &[ClockStep]) -> Result<Solution, 
     let mut solver = Solver {
         circuit,
         clock,
-        diodes,
+        own_bits: guards::own_bits(circuit),
+        mirror,
         varying,
         masses,
         modes: Vec::new(),
@@ -212,7 +204,11 @@ impl Solver<'_> {
             if iteration == FINE_FROM {
                 self.loose = 1.0;
             }
-            let lap = self.lap(&x, conducting)?;
+            let mut lap = self.lap(&x, conducting)?;
+            if let Some(mirror) = self.mirror {
+                mirror.fold(&mut lap.end, &mut lap.derivative);
+                lap.conducting = mirror.bits(lap.conducting);
+            }
             self.sizes = sizes(&lap, &self.sizes);
             residual = self.distance(&x, &lap.end);
             let repeats = lap.conducting == conducting;
@@ -268,6 +264,7 @@ impl Solver<'_> {
             return Ok(found);
         }
         let rows = dynamics::mode(self.circuit, conducting)?;
+        let guards = guards::of(self.circuit, &rows, conducting);
         let states = rows.slopes.len();
         let (a, b) = matrix(&rows.slopes, states);
         let (lift, _) = matrix(&rows.lift, states);
@@ -277,6 +274,7 @@ impl Solver<'_> {
             b,
             lift: lift.transpose(),
             rows,
+            guards,
             steps: Vec::new(),
         });
         Ok(self.modes.len() - 1)
@@ -294,20 +292,6 @@ impl Solver<'_> {
         Ok(step)
     }
 
-    /// A diode's margin to its next change as a row: positive while it stays as it is.
-    fn guard(&self, mode: usize, diode: &Diode, conducting: u32) -> Vec<f64> {
-        let rows = &self.modes[mode].rows;
-        if conducting & diode.bit != 0 {
-            rows.current.row(diode.branch).iter().map(|x| -x).collect()
-        } else {
-            let mut row = rows.voltage.row(diode.branch).to_vec();
-            if let Some(last) = row.last_mut() {
-                *last += diode.forward_v;
-            }
-            row
-        }
-    }
-
     /// Slopes of the states.
     fn slopes(&self, mode: usize, x: &DVector<f64>) -> DVector<f64> {
         let m = &self.modes[mode];
@@ -322,14 +306,13 @@ impl Solver<'_> {
 
     /// One period from `x`.
     fn lap(&mut self, x: &DVector<f64>, conducting: u32) -> Result<Lap, OrbitError> {
-        let diode_bits = self.diodes.iter().fold(0, |bits, d| bits | d.bit);
         let n = x.len();
         let mut lap = Lap {
             end: x.clone(),
             derivative: DMatrix::identity(n, n),
             pieces: Vec::with_capacity(32),
             jump_energy_j: 0.0,
-            conducting: conducting & diode_bits,
+            conducting: conducting & self.own_bits,
         };
         let mut start_s = 0.0;
         let clock = self.clock;
@@ -369,9 +352,9 @@ impl Solver<'_> {
         };
         let mut mode = self.mode(clock.closed | lap.conducting)?;
         self.enter(mode, lap)?;
-        while let Some(bit) = self.inconsistent(mode, lap) {
+        while let Some(flips) = self.inconsistent(mode, lap) {
             count(1)?;
-            lap.conducting ^= bit;
+            lap.conducting ^= flips;
             mode = self.mode(clock.closed | lap.conducting)?;
             self.enter(mode, lap)?;
         }
@@ -404,8 +387,8 @@ impl Solver<'_> {
                 self.split(length, coarse, &lap.end, tried.as_ref(), &mut ahead);
                 continue;
             };
-            let event = self.first_event(mode, &lap.end, nodes, lap.conducting);
-            let Some((diode, share)) = event else {
+            let event = self.first_event(mode, &lap.end, nodes);
+            let Some((guard, share)) = event else {
                 if whole {
                     plan.steps.push((length, Some(nodes.volts.clone())));
                 }
@@ -415,8 +398,8 @@ impl Solver<'_> {
             };
             count(1)?;
             whole = false;
-            done += self.to_event(mode, diode, share * length, start_s + done, lap)?;
-            self.change(&mut mode, diode, clock.closed, lap)?;
+            done += self.to_event(mode, guard, share * length, start_s + done, lap)?;
+            self.change(&mut mode, guard, clock.closed, lap)?;
             ahead = quarters((clock.duration_s - done).max(0.0));
             if clock.duration_s - done <= 1e-15 * clock.duration_s {
                 break;
@@ -518,12 +501,12 @@ impl Solver<'_> {
     fn to_event(
         &mut self,
         mode: usize,
-        diode: usize,
+        guard: usize,
         guess_s: f64,
         start_s: f64,
         lap: &mut Lap,
     ) -> Result<f64, OrbitError> {
-        let guard = self.guard(mode, &self.diodes[diode], lap.conducting);
+        let guard = self.modes[mode].guards[guard].row.clone();
         let n = lap.end.len();
         let mut length = guess_s;
         if length <= 0.0 {
@@ -560,11 +543,14 @@ impl Solver<'_> {
     fn change(
         &mut self,
         mode: &mut usize,
-        diode: usize,
+        guard: usize,
         closed: u32,
         lap: &mut Lap,
     ) -> Result<(), OrbitError> {
-        let mut guard = self.guard(*mode, &self.diodes[diode], lap.conducting);
+        let Guard {
+            row: mut guard,
+            flips,
+        } = self.modes[*mode].guards[guard].clone();
         let n = lap.end.len();
         guard[n] = 0.0;
         let before = self.slopes(*mode, &lap.end);
@@ -572,7 +558,7 @@ impl Solver<'_> {
         let row = DMatrix::from_fn(1, n, |_, c| {
             (0..n).map(|r| guard[r] * lap.derivative[(r, c)]).sum()
         });
-        lap.conducting ^= self.diodes[diode].bit;
+        lap.conducting ^= flips;
         *mode = self.mode(closed | lap.conducting)?;
         let old = lap.end.clone();
         self.enter(*mode, lap)?;
@@ -651,33 +637,32 @@ impl Solver<'_> {
         DMatrix::from_columns(&columns)
     }
 
-    /// The bit of a diode that contradicts the state at hand.
+    /// The bits that contradict the state at hand.
     fn inconsistent(&self, mode: usize, lap: &Lap) -> Option<u32> {
-        self.diodes.iter().find_map(|diode| {
-            let row = self.guard(mode, diode, lap.conducting);
-            (value(&row, &lap.end) < -rounding(&row, &lap.end)).then_some(diode.bit)
-        })
+        let contradicts = |g: &&Guard| value(&g.row, &lap.end) < -rounding(&g.row, &lap.end);
+        self.modes[mode]
+            .guards
+            .iter()
+            .find(contradicts)
+            .map(|g| g.flips)
     }
 
-    /// The first diode whose guard falls below zero within a step, and the share of the step
-    /// until then.
+    /// The first guard to fall below zero within a step, and the share of the step until then.
     fn first_event(
         &self,
         mode: usize,
         start: &DVector<f64>,
         nodes: &Nodes,
-        conducting: u32,
     ) -> Option<(usize, f64)> {
         let n = start.len();
         let mut earliest: Option<(usize, f64)> = None;
-        for (k, diode) in self.diodes.iter().enumerate() {
-            let row = self.guard(mode, diode, conducting);
-            let mut at = [value(&row, start); S + 1];
-            let mut tolerance = rounding(&row, start);
+        for (k, Guard { row, .. }) in self.modes[mode].guards.iter().enumerate() {
+            let mut at = [value(row, start); S + 1];
+            let mut tolerance = rounding(row, start);
             for i in 0..S {
                 let states = nodes.states.rows(i * n, n);
-                at[i + 1] = value(&row, &states);
-                tolerance = tolerance.max(rounding(&row, &states));
+                at[i + 1] = value(row, &states);
+                tolerance = tolerance.max(rounding(row, &states));
             }
             if let Some(share) = read::first_fall(&at, tolerance)
                 && earliest.is_none_or(|(_, before)| share < before)

@@ -240,20 +240,28 @@ pub(super) fn first_fall<const N: usize>(
     let below = -row;
     let cell = flow.cell_rung();
     let width = flow.rung_duration(cell);
-    let mut left = *x;
-    for k in 0..1usize << CELLS_LOG2 {
-        let at = k as f64 * width;
-        let right = flow.advance(cell, &left);
+    let (mut left, mut at, mut rung) = (*x, 0.0, 0);
+    let mut k = usize::from(cell == 0);
+    while k <= 1usize << CELLS_LOG2 {
+        let right = flow.advance(rung, &left);
         if row.dot(&right) < -tolerance {
-            return Some(narrow(flow, left, at, cell, &[below]));
+            return Some(narrow(flow, left, at, rung, &[below]));
         }
         if slope_row.dot(&left) < 0.0 && slope_row.dot(&right) > 0.0 {
-            let bottom = narrow(flow, left, at, cell, &[slope_row]);
+            let bottom = narrow(flow, left, at, rung, &[slope_row]);
             if row.dot(&bottom.state) < -tolerance {
-                return Some(narrow(flow, left, at, cell, &[below, slope_row]));
+                return Some(narrow(flow, left, at, rung, &[below, slope_row]));
             }
         }
         left = right;
+        at += flow.rung_duration(rung);
+        if k > 0 || at > 0.75 * width {
+            (rung, k) = (cell, k.max(1) + 1);
+        } else if at > 1.5 * flow.step {
+            // The first cell by its rungs, each as long as what lies behind it: transients live
+            // there.
+            rung += 1;
+        }
     }
     None
 }

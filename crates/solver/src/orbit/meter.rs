@@ -7,9 +7,8 @@
 
 use super::flow::{CELLS_LOG2, Flow, Square, State, narrow, series_at};
 use super::shoot::{Piece, Solution};
-use super::{Extremes, Orbit, Probe};
+use super::{Extremes, Orbit, Probe, ending};
 use num_complex::Complex64;
-use std::f64::consts::TAU;
 
 /// Nodes on 0..1 and weights of 8-point Gauss-Legendre quadrature.
 pub(super) const GAUSS: [(f64, f64); 8] = [
@@ -191,31 +190,47 @@ impl<const N: usize> Orbit for Solution<N> {
             let slope_row = flow.a.tr_mul(&row);
             let cell = flow.cell_rung();
             let width = flow.rung_duration(cell);
-            let mut before = (row.dot(&grid[0]), slope_row.dot(&grid[0]));
+            // The first cell by its rungs: transients live there.
+            let mut left = grid[0];
+            let (mut at, mut rung) = (0.0, 0);
+            let mut before = (row.dot(&left), slope_row.dot(&left));
             look(before.0, piece.start_s);
-            for (k, x) in grid.iter().enumerate().skip(1) {
-                let after = (row.dot(x), slope_row.dot(x));
-                let at = (k - 1) as f64 * width;
-                let (least, greatest) = look(after.0, piece.start_s + at + width);
+            let mut k = usize::from(cell == 0);
+            while k < grid.len() {
+                let length = flow.rung_duration(rung);
+                let right = if at + length < width * 0.75 {
+                    flow.advance(rung, &left)
+                } else {
+                    k = k.max(1);
+                    grid[k]
+                };
+                let after = (row.dot(&right), slope_row.dot(&right));
+                let (least, greatest) = look(after.0, piece.start_s + at + length);
                 if before.1 * after.1 < 0.0 {
                     // Only where the turning point can lie beyond what is known already.
-                    let reach = width * before.1.abs().max(after.1.abs());
+                    let reach = length * before.1.abs().max(after.1.abs());
                     if before.0.max(after.0) + reach > greatest
                         || before.0.min(after.0) - reach < least
                     {
                         let rows = [slope_row * after.1.signum()];
-                        let turn = narrow(flow, grid[k - 1], at, cell, &rows);
+                        let turn = narrow(flow, left, at, rung, &rows);
                         look(row.dot(&turn.state), piece.start_s + turn.at);
                     }
                 }
-                before = after;
+                if k == 0 {
+                    // After the first rung the next is as long as what lies behind it.
+                    rung += usize::from(at > 0.0);
+                } else {
+                    (rung, k) = (cell, k + 1);
+                }
+                (before, left) = (after, right);
+                at += length;
             }
         }
         found
     }
 
-    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>> {
-        let omega = TAU / self.period_s;
+    fn fourier(&self, probes: &[Probe], count: usize, omega: f64) -> Vec<Vec<Complex64>> {
         let mut sums = vec![vec![Complex64::new(0.0, 0.0); count + 1]; probes.len()];
         for (piece, nodes) in self.pieces.iter().zip(self.nodes()) {
             let parts = fourier(&self.flows[piece.flow], nodes, omega, count);
@@ -232,8 +247,9 @@ impl<const N: usize> Orbit for Solution<N> {
         sums
     }
 
-    fn before_end(&self, probe: Probe) -> (f64, f64) {
-        let Some(piece) = self.pieces.last() else {
+    fn before(&self, probe: Probe, time_s: f64) -> (f64, f64) {
+        let end_s = |p: &Piece<N>| p.start_s + p.duration_s;
+        let Some(piece) = ending(&self.pieces, time_s, end_s) else {
             return (0.0, 0.0);
         };
         let row = self.row(piece, probe);

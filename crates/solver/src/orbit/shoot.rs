@@ -1,6 +1,8 @@
 //! Newton's method on the period map.
 
 use super::flow::{Flow, Square, State, first_fall};
+use super::guards;
+use super::mirror::Mirror;
 use super::{ClockStep, OrbitError};
 use crate::circuit::{Circuit, Element};
 use crate::dynamics::{self, Rows};
@@ -29,6 +31,7 @@ pub(super) struct SizedMode<const N: usize> {
     pub(super) latch: Option<Square<N>>,
     pub(super) voltage: Vec<State<N>>,
     pub(super) current: Vec<State<N>>,
+    guards: Vec<(State<N>, u32)>,
 }
 
 /// A stretch between events.
@@ -40,12 +43,6 @@ pub(super) struct Piece<const N: usize> {
     pub(super) start: State<N>,
     pub(super) end: State<N>,
     pub(super) flow: usize,
-}
-
-struct Diode {
-    bit: u32,
-    branch: usize,
-    forward_v: f64,
 }
 
 /// The solved orbit.
@@ -69,7 +66,9 @@ pub(super) struct Solution<const N: usize> {
 struct Solver<'a, const N: usize> {
     circuit: &'a Circuit,
     clock: &'a [ClockStep],
-    diodes: Vec<Diode>,
+    /// Bits of the elements that switch by themselves.
+    own_bits: u32,
+    mirror: Option<&'a Mirror>,
     masses: State<N>,
     period_s: f64,
     modes: Vec<SizedMode<N>>,
@@ -89,6 +88,7 @@ struct Lap<const N: usize> {
 pub(super) fn solve<const N: usize>(
     circuit: &Circuit,
     clock: &[ClockStep],
+    mirror: Option<&Mirror>,
 ) -> Result<Solution<N>, OrbitError>
 where
     Const<N>: DimMin<Const<N>, Output = Const<N>>,
@@ -101,18 +101,6 @@ where
         }
     }
     let switching = circuit.switching_branches();
-    let diodes = switching
-        .iter()
-        .enumerate()
-        .filter_map(|(k, &branch)| match circuit.branches[branch].element {
-            Element::Diode { forward_v, .. } => Some(Diode {
-                bit: 1 << k,
-                branch,
-                forward_v,
-            }),
-            _ => None,
-        })
-        .collect();
     let (capacitors, inductors) = circuit.state_branches();
     let mut masses = State::<N>::zeros();
     for (k, &branch) in capacitors.iter().chain(&inductors).enumerate() {
@@ -125,7 +113,8 @@ where
     let mut solver = Solver {
         circuit,
         clock,
-        diodes,
+        own_bits: guards::own_bits(circuit),
+        mirror,
         masses,
         period_s: clock.iter().map(|s| s.duration_s).sum(),
         modes: Vec::new(),
@@ -156,12 +145,12 @@ impl<const N: usize> Solver<'_, N> {
         x[N - 1] = 1.0;
         // Diodes left out: the exact answer where none conducts, a start where some do.
         let mut conducting = 0;
-        let first = self.lap(&x, conducting, false)?;
+        let first = self.folded(&x, conducting, false)?;
         x = newton(&x, &first, &self.masses)?;
         let mut residual = f64::INFINITY;
         for iteration in 1..=MOST_ITERATIONS {
             self.flows.truncate(self.kept.len());
-            let lap = self.lap(&x, conducting, true)?;
+            let lap = self.folded(&x, conducting, true)?;
             residual = self.distance(&x, &lap.end, &lap);
             let repeats = lap.conducting == conducting;
             conducting = lap.conducting;
@@ -236,6 +225,7 @@ impl<const N: usize> Solver<'_, N> {
             matrix
         };
         let rows = |rows: &Rows| (0..rows.len()).map(|k| wide(rows.row(k))).collect();
+        let guards = guards::of(self.circuit, &mode, conducting);
         self.modes.push(SizedMode {
             conducting,
             a: square(&mode.slopes, -1.0 / self.period_s, 0.0),
@@ -243,6 +233,7 @@ impl<const N: usize> Solver<'_, N> {
             latch: mode.latch.as_ref().map(|l| square(l, 1.0, 1.0)),
             voltage: rows(&mode.voltage),
             current: rows(&mode.current),
+            guards: guards.iter().map(|g| (wide(&g.row), g.flips)).collect(),
         });
         Ok(self.modes.len() - 1)
     }
@@ -265,15 +256,23 @@ impl<const N: usize> Solver<'_, N> {
         Ok(number)
     }
 
-    /// A diode's margin to its next change as a row: positive while it stays as it is.
-    fn guard(&self, mode: usize, diode: &Diode, conducts: bool) -> State<N> {
-        if conducts {
-            -self.modes[mode].current[diode.branch]
-        } else {
-            let mut row = self.modes[mode].voltage[diode.branch];
-            row[N - 1] += diode.forward_v;
-            row
+    /// One period from `x`, or half of one and an exchange of sides.
+    fn folded(
+        &mut self,
+        x: &State<N>,
+        conducting: u32,
+        with_events: bool,
+    ) -> Result<Lap<N>, OrbitError> {
+        let mut lap = self.lap(x, conducting, with_events)?;
+        if let Some(mirror) = self.mirror {
+            let (end, derivative) = (lap.end, lap.derivative);
+            for (k, &(partner, sign)) in mirror.states.iter().enumerate() {
+                lap.end[k] = sign * end[partner];
+                lap.derivative.set_row(k, &(derivative.row(partner) * sign));
+            }
+            lap.conducting = mirror.bits(lap.conducting);
         }
+        Ok(lap)
     }
 
     /// One period from `x`.
@@ -281,15 +280,14 @@ impl<const N: usize> Solver<'_, N> {
         &mut self,
         x: &State<N>,
         conducting: u32,
-        with_diodes: bool,
+        with_events: bool,
     ) -> Result<Lap<N>, OrbitError> {
-        let diode_bits = self.diodes.iter().fold(0, |bits, d| bits | d.bit);
         let mut lap = Lap {
             end: *x,
             derivative: Square::identity(),
             pieces: Vec::with_capacity(8),
             jump_energy_j: 0.0,
-            conducting: conducting & diode_bits,
+            conducting: conducting & self.own_bits,
         };
         let mut start_s = 0.0;
         for step in self.clock {
@@ -299,15 +297,15 @@ impl<const N: usize> Solver<'_, N> {
                 lap.end = latch * lap.end;
                 lap.derivative = latch * lap.derivative;
             }
-            let mut settled = !with_diodes;
+            let mut settled = !with_events;
             let mut events = 0;
             loop {
                 let mode = self.mode(step.closed | lap.conducting)?;
                 self.enter(mode, &mut lap);
                 if !settled {
                     settled = true;
-                    if let Some(bit) = self.inconsistent(mode, &lap) {
-                        lap.conducting ^= bit;
+                    if let Some(flips) = self.inconsistent(mode, &lap) {
+                        lap.conducting ^= flips;
                         settled = false;
                         events += 1;
                         if events > MOST_EVENTS {
@@ -318,12 +316,12 @@ impl<const N: usize> Solver<'_, N> {
                 }
                 let whole = left == step.duration_s;
                 let flow = self.flow(mode, left, whole)?;
-                let event = if with_diodes {
+                let event = if with_events {
                     self.first_event(mode, flow, &lap)
                 } else {
                     None
                 };
-                let Some((diode, at, state)) = event else {
+                let Some((guard, at, state)) = event else {
                     let end = self.flows[flow].end(&lap.end);
                     lap.pieces.push(Piece {
                         mode,
@@ -342,8 +340,7 @@ impl<const N: usize> Solver<'_, N> {
                 if events > MOST_EVENTS {
                     return Err(OrbitError::Chatter { events });
                 }
-                let bit = self.diodes[diode].bit;
-                let before = self.guard(mode, &self.diodes[diode], lap.conducting & bit != 0);
+                let (before, flips) = self.modes[mode].guards[guard];
                 if at > 0.0 {
                     let part = self.flow(mode, at, false)?;
                     lap.pieces.push(Piece {
@@ -359,7 +356,7 @@ impl<const N: usize> Solver<'_, N> {
                 lap.end = state;
                 // The instant moves with the state: d(at) = -(g . dx) / (g . x').
                 let slope_before = self.modes[mode].a * state;
-                lap.conducting ^= bit;
+                lap.conducting ^= flips;
                 let next = self.mode(step.closed | lap.conducting)?;
                 let moved = self.modes[next]
                     .project
@@ -401,12 +398,13 @@ impl<const N: usize> Solver<'_, N> {
         }
     }
 
-    /// The bit of a diode that contradicts the state at the start of a stretch.
+    /// The bits that contradict the state at the start of a stretch.
     fn inconsistent(&self, mode: usize, lap: &Lap<N>) -> Option<u32> {
-        self.diodes.iter().find_map(|diode| {
-            let row = self.guard(mode, diode, lap.conducting & diode.bit != 0);
-            (row.dot(&lap.end) < -rounding(&row, &lap.end)).then_some(diode.bit)
-        })
+        self.modes[mode]
+            .guards
+            .iter()
+            .find(|(row, _)| row.dot(&lap.end) < -rounding(row, &lap.end))
+            .map(|(_, flips)| *flips)
     }
 
     fn first_event(
@@ -416,10 +414,9 @@ impl<const N: usize> Solver<'_, N> {
         lap: &Lap<N>,
     ) -> Option<(usize, f64, State<N>)> {
         let mut earliest: Option<(usize, f64, State<N>)> = None;
-        for (k, diode) in self.diodes.iter().enumerate() {
-            let row = self.guard(mode, diode, lap.conducting & diode.bit != 0);
-            let tolerance = rounding(&row, &lap.end);
-            if let Some(fall) = first_fall(&self.flows[flow], &lap.end, &row, tolerance)
+        for (k, (row, _)) in self.modes[mode].guards.iter().enumerate() {
+            let tolerance = rounding(row, &lap.end);
+            if let Some(fall) = first_fall(&self.flows[flow], &lap.end, row, tolerance)
                 && earliest.as_ref().is_none_or(|(_, at, _)| fall.at < *at)
             {
                 earliest = Some((k, fall.at, fall.state));

@@ -4,10 +4,10 @@ use super::radau::{NODES, S, SPREAD, TABLE};
 use super::step::{Step, spread};
 use super::{Piece, Solution, value};
 use crate::orbit::meter::GAUSS;
-use crate::orbit::{Extremes, Orbit, Probe};
+use crate::orbit::{Extremes, Orbit, Probe, ending};
 use nalgebra::DVector;
 use num_complex::Complex64;
-use std::f64::consts::TAU;
+use std::f64::consts::FRAC_PI_2;
 
 /// Looks within a step.
 const LOOKS: usize = 16;
@@ -195,22 +195,24 @@ impl Orbit for Solution {
                 }
                 value
             };
-            let grid: [f64; LOOKS + 1] =
-                std::array::from_fn(|look_at| look(look_at as f64 / LOOKS as f64));
+            let grid: [f64; LOOKS + 1] = std::array::from_fn(|k| look(look_at(k)));
             for k in 1..LOOKS {
                 let (a, b, c) = (grid[k - 1], grid[k], grid[k + 1]);
                 if (b - a) * (c - b) < 0.0 {
-                    look(turn(&values, (k - 1) as f64, (k + 1) as f64));
+                    look(turn(&values, look_at(k - 1), look_at(k + 1)));
                 }
             }
         }
         // On a border it may lie on either side.
+        let count = self.pieces.len();
         let better = |at: Option<(usize, f64)>, sign: f64| {
             let (number, share) = at?;
             let beyond = if share >= 1.0 {
-                self.pieces.get(number + 1).map(|p| (p, 0.0))
-            } else if share <= 0.0 && number > 0 {
-                self.pieces.get(number - 1).map(|p| (p, 1.0))
+                self.pieces.get((number + 1) % count).map(|p| (p, 0.0))
+            } else if share <= 0.0 {
+                self.pieces
+                    .get((number + count - 1) % count)
+                    .map(|p| (p, 1.0))
             } else {
                 None
             };
@@ -225,8 +227,7 @@ impl Orbit for Solution {
         found
     }
 
-    fn harmonics(&self, probes: &[Probe], count: usize) -> Vec<Vec<Complex64>> {
-        let omega = TAU / self.period_s;
+    fn fourier(&self, probes: &[Probe], count: usize, omega: f64) -> Vec<Vec<Complex64>> {
         let mut sums = vec![vec![Complex64::new(0.0, 0.0); count + 1]; probes.len()];
         for piece in &self.pieces {
             // Parts short enough for eight nodes at the highest harmonic.
@@ -253,8 +254,9 @@ impl Orbit for Solution {
         sums
     }
 
-    fn before_end(&self, probe: Probe) -> (f64, f64) {
-        let Some(piece) = self.pieces.last() else {
+    fn before(&self, probe: Probe, time_s: f64) -> (f64, f64) {
+        let end_s = |p: &Piece| p.start_s + p.length;
+        let Some(piece) = ending(&self.pieces, time_s, end_s) else {
             return (0.0, 0.0);
         };
         let row = self.row(piece, probe);
@@ -301,10 +303,16 @@ impl Orbit for Solution {
     }
 }
 
-/// Where the polynomial turns between two looks (in units of a look), by golden section.
+/// Share of a step at which it is looked at: more often towards its ends.
+fn look_at(look: usize) -> f64 {
+    let root = libm::sin(look as f64 * FRAC_PI_2 / LOOKS as f64);
+    root * root
+}
+
+/// Where the polynomial turns between two shares of the step, by golden section.
 fn turn(values: &[f64; S + 1], from: f64, to: f64) -> f64 {
     const GOLDEN: f64 = 0.618_033_988_749_894_9;
-    let at = |look: f64| between(values, look / LOOKS as f64);
+    let at = |share: f64| between(values, share);
     let sign = if at(0.5 * (from + to)) > at(from) {
         1.0
     } else {
@@ -319,5 +327,5 @@ fn turn(values: &[f64; S + 1], from: f64, to: f64) -> f64 {
             low = a;
         }
     }
-    0.5 * (low + high) / LOOKS as f64
+    0.5 * (low + high)
 }
