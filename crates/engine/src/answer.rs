@@ -1,6 +1,7 @@
 //! What the engine says of a design: the result object of the design file, and the pictures.
 
 use crate::design::{Capacitor, Coil, Feed, Load};
+use crate::stage::Detail;
 use serde::Serialize;
 
 /// The answer to one design.
@@ -43,6 +44,9 @@ pub struct Solved {
     pub harmonics_dbc: Vec<f64>,
     /// Unaccounted part of the supply power, relative.
     pub balance: f64,
+    /// Sides and stacked switches one by one.
+    #[serde(skip_serializing_if = "Detail::is_empty")]
+    pub detail: Detail,
     /// Each limit with value, bound and whether it is met.
     pub verdicts: Vec<Verdict>,
     /// What the person should know about how the answer was reached.
@@ -76,6 +80,15 @@ pub struct Values {
     pub drain_load: Load,
     /// Supply voltage, volts.
     pub supply_v: f64,
+    /// Capacitor between the drains of a differential stage.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub cross: Option<Capacitor>,
+    /// Coil of the trap across the switch.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub trap_coil: Option<Coil>,
+    /// Capacitor of the trap across the switch.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub trap_capacitor: Option<Capacitor>,
 }
 
 /// What an engineer reads.
@@ -141,11 +154,21 @@ pub struct Losses {
     pub series_coil_w: f64,
     /// Series resistance of the series capacitor, watts.
     pub series_capacitor_w: f64,
+    /// Series resistance of the capacitor between the drains, watts.
+    #[serde(skip_serializing_if = "is_zero")]
+    pub cross_capacitor_w: f64,
+    /// Series resistances of the trap, watts.
+    #[serde(skip_serializing_if = "is_zero")]
+    pub trap_w: f64,
+}
+
+fn is_zero(watt: &f64) -> bool {
+    *watt == 0.0
 }
 
 impl Losses {
     /// Each loss with the design file's name for it.
-    pub fn named(&self) -> [(&'static str, f64); 8] {
+    pub fn named(&self) -> [(&'static str, f64); 10] {
         [
             ("switch_w", self.switch_w),
             ("turn_on_w", self.turn_on_w),
@@ -155,6 +178,8 @@ impl Losses {
             ("shunt_capacitor_w", self.shunt_capacitor_w),
             ("series_coil_w", self.series_coil_w),
             ("series_capacitor_w", self.series_capacitor_w),
+            ("cross_capacitor_w", self.cross_capacitor_w),
+            ("trap_w", self.trap_w),
         ]
     }
 
@@ -191,6 +216,8 @@ pub struct Waveforms {
     pub t_s: Vec<f64>,
     /// Drain voltage, volts.
     pub drain_v: Vec<f64>,
+    /// Drain voltage of the other side, volts; empty where there is none.
+    pub drain_b_v: Vec<f64>,
     /// Current through the switch, diode not included, amperes.
     pub switch_a: Vec<f64>,
     /// Current into the shunt capacitance, amperes.

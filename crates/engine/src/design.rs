@@ -144,9 +144,31 @@ pub struct Device {
     /// Time in which the switch current falls to zero at turn-off, seconds. Default: 0.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub fall_time_s: Option<f64>,
+    /// The switches above the lowest of a stack. Default: like the lowest, with its capacitance.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub upper: Option<Upper>,
+    /// Gate threshold of the upper switches of a stack, volts. Default: 0.
+    #[serde(skip_serializing_if = "is_nothing")]
+    pub threshold_v: f64,
+    /// Capacitance from each node within a stack to ground, farads. Default: 0.
+    #[serde(skip_serializing_if = "is_nothing")]
+    pub node_f: f64,
     /// Thermal resistance from junction to ambient, kelvin per watt. Default: not given.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub junction_to_ambient_k_per_w: Option<f64>,
+}
+
+/// An upper switch of a stack, with data of its own.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Upper {
+    /// On-resistance, ohms.
+    pub on_resistance_ohm: f64,
+    /// Capacitance across it, farads.
+    pub across_f: f64,
+    /// Greatest voltage across it, volts. Default: that of the lowest.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub rating_v: Option<f64>,
 }
 
 /// Output capacitance of the switch.
@@ -212,6 +234,48 @@ pub struct StageChoice {
     /// What sizing strives for. Default: soft switching.
     #[serde(skip_serializing_if = "is_soft")]
     pub aim: Aim,
+    /// Coupling coefficient of a differential stage's feed coils: 0 for two coils of their own,
+    /// towards 1 for one with a centre tap. Default: 0.
+    #[serde(skip_serializing_if = "is_nothing")]
+    pub feed_coupling: f64,
+    /// Part of a differential stage's fitted shunt susceptance that one capacitor between the
+    /// drains does, 0 to 1. Default: 0.
+    #[serde(skip_serializing_if = "is_nothing")]
+    pub cross_share: f64,
+    /// What the second side of a differential stage has more than the first. Default: nothing.
+    #[serde(skip_serializing_if = "Mismatch::is_none")]
+    pub mismatch: Mismatch,
+    /// Series trap at the second harmonic across the switch: the shunt capacitance over the
+    /// trap's. Default: no trap.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub trap_ratio: Option<f64>,
+    /// Gate supplies of the upper switches of a stack, volts, from the ground up. Default: those
+    /// that share the voltage in proportion to the ratings.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub gate_supplies_v: Option<Vec<f64>>,
+}
+
+/// Relative differences of the second side of a differential stage.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct Mismatch {
+    /// Of the on-resistance.
+    pub on_resistance: f64,
+    /// Of the on-fraction.
+    pub duty: f64,
+    /// Of the device's capacitance.
+    pub capacitance: f64,
+}
+
+impl Mismatch {
+    /// Whether there is none.
+    pub fn is_none(&self) -> bool {
+        *self == Self::default()
+    }
+}
+
+fn is_nothing(value: &f64) -> bool {
+    *value == 0.0
 }
 
 fn is_soft(aim: &Aim) -> bool {
@@ -229,6 +293,11 @@ impl Default for StageChoice {
             coil_q: None,
             capacitor_q: None,
             aim: Aim::SoftSwitching,
+            feed_coupling: 0.0,
+            cross_share: 0.0,
+            mismatch: Mismatch::default(),
+            trap_ratio: None,
+            gate_supplies_v: None,
         }
     }
 }
@@ -275,6 +344,11 @@ pub enum Feed {
         /// Henries.
         l_h: f64,
     },
+    /// The coil with which the series branch is in resonance at the carrier (X = 0).
+    Parallel {},
+    /// The coil with which switching stays soft for other load resistances as well.
+    #[serde(rename = "load_independent")]
+    LoadIndependent {},
 }
 
 fn thirty() -> f64 {
@@ -309,6 +383,9 @@ pub struct Fitted {
     /// Series capacitor.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub series_capacitor: Option<Capacitor>,
+    /// Capacitor between the drains of a differential stage.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub cross: Option<Capacitor>,
     /// What the series branch ends in.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub drain_load: Option<Load>,

@@ -11,6 +11,7 @@ mod least_loss;
 mod newton;
 mod path;
 mod problem;
+mod stack;
 mod thermal;
 mod verdict;
 
@@ -78,6 +79,8 @@ pub enum SizingError {
         /// The part of the way from a constant capacitance to the law at which it was still
         /// found.
         share: f64,
+        /// Whether it is the stack and not the law.
+        stack: bool,
     },
     /// The losses do not allow soft switching.
     Losses {
@@ -117,6 +120,7 @@ impl SizingError {
             Self::Pinned { .. } => Some("fitted"),
             Self::Feed { pinned: true, .. } => Some("fitted.feed"),
             Self::Feed { pinned: false, .. } => Some("stage.feed"),
+            Self::Law { stack: true, .. } => Some("stage.stack"),
             Self::Law { .. } => Some("device.capacitance"),
             Self::Losses { .. } => Some("stage.coil_q"),
             Self::Power { .. } => Some("brief.power_w"),
@@ -183,7 +187,11 @@ impl fmt::Display for SizingError {
                     "at duty {duty} there is no soft switching with {nearest}"
                 )
             }
-            Self::Law { share } => write!(
+            Self::Law { stack: true, .. } => write!(
+                f,
+                "with the switches stacked no soft switching was found, although one switch of the same resistance and capacitance has it: other gate supplies, or smaller capacitances within the stack"
+            ),
+            Self::Law { share, .. } => write!(
                 f,
                 "with the device's charge law no soft switching was found, only up to {:.0} % of the way from a constant capacitance of the same energy to it: a larger capacitor beside the device or a smaller device makes it tamer",
                 100.0 * share
@@ -227,6 +235,7 @@ pub fn solve(design: &Design) -> Answer {
                 losses: reading.losses,
                 harmonics_dbc: reading.harmonics_dbc,
                 balance: reading.balance,
+                detail: reading.detail,
                 verdicts,
                 notes,
                 waveforms,
@@ -298,8 +307,15 @@ fn settled(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError
     let problem = Problem::of(design)?;
     let trial = |problem: &Problem| {
         let mut notes = problem.notes.clone();
-        let mut stage = path::size(problem, &mut notes)?;
-        if design.stage.aim == Aim::LeastLoss {
+        let mut stage = stack::size(problem, &mut notes)?;
+        let plain =
+            problem.pair.is_none() && problem.stack.is_none() && problem.trap_ratio.is_none();
+        if design.stage.aim == Aim::LeastLoss && !plain {
+            notes.push(
+                "Least loss is sought for one plain switch only: this is the soft-switching stage."
+                    .into(),
+            );
+        } else if design.stage.aim == Aim::LeastLoss {
             stage = least_loss::improve(problem, stage, &mut notes)?;
         }
         let reading = stage.solve().map_err(SizingError::Stage)?;

@@ -1,15 +1,17 @@
-//! The stage: parts and device to a circuit, and the solved circuit to the figures that an
-//! engineer reads.
+//! The stage: parts and device to a circuit (`layout`), and the solved circuit to the figures
+//! that an engineer reads (`reading`).
 
-use crate::answer::{Figures, Losses, Values, Waveforms};
+mod layout;
+mod reading;
+
+pub use layout::Layout;
+pub use reading::{Detail, Reading, SAMPLES, SideFigures, SwitchStress};
+
+use crate::answer::{Values, Waveforms};
 use crate::charge::ChargeLaw;
-use crate::circuit::{Circuit, Element};
-use crate::design::{Capacitor, Coil, Diode, Load};
-use crate::orbit::{self, ClockStep, Orbit, OrbitError, Probe};
-use num_complex::Complex64;
-use std::f64::consts::TAU;
+use crate::design::{Capacitor, Coil, Diode, Load, Mismatch};
+use crate::orbit::{OrbitError, Probe};
 use std::fmt;
-use std::ops::Range;
 
 /// Unaccounted part of the supply power above which a solve is an error.
 pub const BALANCE_BOUND: f64 = 1e-9;
@@ -17,8 +19,6 @@ pub const BALANCE_BOUND: f64 = 1e-9;
 pub const CURVED_BALANCE_BOUND: f64 = 1e-6;
 /// Harmonics that are reported.
 pub const HARMONICS: usize = 20;
-/// Samples in one period of the waveforms.
-pub const SAMPLES: usize = 256;
 
 /// A stage as built: every value known. SI units.
 #[derive(Debug, Clone, PartialEq)]
@@ -48,8 +48,53 @@ pub struct Stage {
     pub series_coil: Part,
     /// Series capacitor.
     pub series_capacitor: Part,
-    /// Load of the series branch.
+    /// Load of the series branch; between the drains of a pair.
     pub load: Load,
+    /// Series trap at the second harmonic across the switch.
+    pub trap: Option<Trap>,
+    /// The second side of a differential stage; everything above is then that of one side, but
+    /// for the series branch and the load, which lie between the drains.
+    pub pair: Option<Pair>,
+    /// The switches above the lowest, from the ground up.
+    pub uppers: Vec<Upper>,
+    /// Gate threshold of the upper switches, volts.
+    pub threshold_v: f64,
+}
+
+/// A coil and a capacitor in series.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Trap {
+    /// The coil.
+    pub coil: Part,
+    /// The capacitor.
+    pub capacitor: Part,
+}
+
+/// What two sides half a period apart have between them.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Pair {
+    /// Coupling coefficient of the two feed coils.
+    pub feed_coupling: f64,
+    /// Capacitor between the drains; value 0 for none.
+    pub cross: Part,
+    /// What the second side has more than the first.
+    pub mismatch: Mismatch,
+}
+
+/// An upper switch of a stack: its gate stands at a fixed voltage.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Upper {
+    /// On-resistance, ohms.
+    pub on_resistance_ohm: f64,
+    /// What its gate lets through for each volt that its lower node lies below the clamp,
+    /// amperes per volt.
+    pub siemens: f64,
+    /// Gate supply less threshold, volts.
+    pub clamp_v: f64,
+    /// Capacitance across it, farads.
+    pub across_f: f64,
+    /// Capacitance from its lower node to ground, farads; 0 for none.
+    pub node_f: f64,
 }
 
 /// A reactive part with its series resistance.
@@ -95,24 +140,6 @@ impl From<OrbitError> for StageError {
     }
 }
 
-/// Branch numbers of the stage's circuit.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Layout {
-    /// What is built.
-    pub circuit: Circuit,
-    supply: usize,
-    feed: usize,
-    switch: usize,
-    fall: Option<usize>,
-    diode: Option<usize>,
-    device: Option<usize>,
-    shunt: Option<usize>,
-    series_coil: usize,
-    series_capacitor: usize,
-    load: usize,
-    load_reactance: Option<usize>,
-}
-
 impl Stage {
     /// A lossy 7 MHz stage of four states without a diode: what speed is measured on.
     pub fn example() -> Self {
@@ -134,146 +161,10 @@ impl Stage {
                 r_ohm: 7.43927,
                 x_ohm: 0.0,
             },
-        }
-    }
-
-    /// The stage's circuit.
-    pub fn layout(&self) -> Layout {
-        let (ground, supply, drain, coil_end, branch_end, load_end) = (0, 1, 2, 3, 4, 5);
-        let coil = |p: Part| Element::Inductor {
-            henry: p.value,
-            ohm: p.esr_ohm,
-        };
-        let capacitor = |p: Part| Element::Capacitor {
-            farad: p.value,
-            ohm: p.esr_ohm,
-        };
-        let omega = TAU * self.carrier_hz;
-        let mut c = Circuit {
-            branches: Vec::with_capacity(12),
-            ..Circuit::default()
-        };
-        let source = c.add(
-            "supply",
-            supply,
-            ground,
-            Element::Source {
-                volt: self.supply_v,
-            },
-        );
-        let feed = c.add("feed coil", supply, drain, coil(self.feed));
-        let switch = c.add(
-            "switch",
-            drain,
-            ground,
-            Element::Switch {
-                ohm: self.on_resistance_ohm,
-            },
-        );
-        let diode = self.diode.map(|d| {
-            let element = Element::Diode {
-                forward_v: d.forward_v,
-                ohm: d.slope_ohm,
-            };
-            c.add("body diode", drain, ground, element)
-        });
-        let fall = (self.fall_s > 0.0).then(|| {
-            let element = Element::Fall {
-                of: switch,
-                second: self.fall_s,
-            };
-            c.add("falling switch current", drain, ground, element)
-        });
-        let device = (self.device_f > 0.0).then(|| {
-            let farad = self.device_f;
-            let element = match &self.device_law {
-                Some(law) => {
-                    c.laws.push(law.clone());
-                    Element::Varying { law: 0, farad }
-                }
-                None => Element::Capacitor { farad, ohm: 0.0 },
-            };
-            c.add("device capacitance", drain, ground, element)
-        });
-        let shunt = (self.shunt.value > 0.0)
-            .then(|| c.add("shunt capacitor", drain, ground, capacitor(self.shunt)));
-        let series_coil = c.add("series coil", drain, coil_end, coil(self.series_coil));
-        let series_capacitor = c.add(
-            "series capacitor",
-            coil_end,
-            branch_end,
-            capacitor(self.series_capacitor),
-        );
-        let x = self.load.x_ohm;
-        let reactance = if x > 0.0 {
-            Some(Element::Inductor {
-                henry: x / omega,
-                ohm: 0.0,
-            })
-        } else if x < 0.0 {
-            Some(Element::Capacitor {
-                farad: -1.0 / (omega * x),
-                ohm: 0.0,
-            })
-        } else {
-            None
-        };
-        let load_to = if reactance.is_some() {
-            load_end
-        } else {
-            ground
-        };
-        let load = c.add(
-            "load",
-            branch_end,
-            load_to,
-            Element::Resistor {
-                ohm: self.load.r_ohm,
-            },
-        );
-        let load_reactance =
-            reactance.map(|element| c.add("load reactance", load_end, ground, element));
-        Layout {
-            circuit: c,
-            supply: source,
-            feed,
-            switch,
-            fall,
-            diode,
-            device,
-            shunt,
-            series_coil,
-            series_capacitor,
-            load,
-            load_reactance,
-        }
-    }
-
-    fn solve_layout(&self, layout: &Layout) -> Result<Box<dyn Orbit>, OrbitError> {
-        let period = 1.0 / self.carrier_hz;
-        let bit = |branch: usize| {
-            let switching = layout.circuit.switching_branches();
-            switching
-                .iter()
-                .position(|&b| b == branch)
-                .map_or(0, |k| 1 << k)
-        };
-        let on_s = self.duty * period;
-        let on = ClockStep {
-            duration_s: on_s,
-            closed: bit(layout.switch),
-        };
-        let falling = layout.fall.map(|fall| ClockStep {
-            duration_s: self.fall_s,
-            closed: bit(fall),
-        });
-        let off = ClockStep {
-            duration_s: period - on_s - falling.map_or(0.0, |f| f.duration_s),
-            closed: 0,
-        };
-        match falling {
-            Some(falling) => orbit::solve(&layout.circuit, &[on, falling, off]),
-            None => orbit::solve(&layout.circuit, &[on, off]),
+            trap: None,
+            pair: None,
+            uppers: Vec::new(),
+            threshold_v: 0.0,
         }
     }
 
@@ -284,8 +175,8 @@ impl Stage {
     /// Where there is no periodic state.
     pub fn turn_on(&self) -> Result<(f64, f64, f64), OrbitError> {
         let layout = self.layout();
-        let orbit = self.solve_layout(&layout)?;
-        let (v, slope) = orbit.before_end(Probe::Voltage(layout.switch));
+        let orbit = layout.solve(self)?;
+        let (v, slope) = orbit.before_end(Probe::Voltage(layout.sides[0].drain));
         let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1];
         let i1 = i1.norm_sqr().sqrt();
         Ok((v, slope, 2.0 * i1 * i1 * self.load.r_ohm))
@@ -297,13 +188,17 @@ impl Stage {
     /// Where there is no periodic state.
     pub fn probe(&self) -> Result<Probed, OrbitError> {
         let layout = self.layout();
-        let orbit = self.solve_layout(&layout)?;
+        let orbit = layout.solve(self)?;
         let i1 = orbit.harmonics(&[Probe::Current(layout.load)], 1)[0][1];
         let i1 = i1.norm_sqr().sqrt();
         Ok(Probed {
             output_power_w: 2.0 * i1 * i1 * self.load.r_ohm,
             supply_power_w: -self.supply_v * orbit.mean(Probe::Current(layout.supply)),
-            drain_peak_v: orbit.extremes(Probe::Voltage(layout.switch)).greatest,
+            drain_peak_v: layout
+                .sides
+                .iter()
+                .map(|side| orbit.extremes(Probe::Voltage(side.drain)).greatest)
+                .fold(f64::NEG_INFINITY, f64::max),
         })
     }
 
@@ -321,8 +216,8 @@ impl Stage {
     /// As [`Self::solve`].
     pub fn solve_to_harmonic(&self, highest: usize) -> Result<Reading, StageError> {
         let layout = self.layout();
-        let orbit = self.solve_layout(&layout)?;
-        let reading = read(self, &layout, orbit.as_ref(), highest.max(1));
+        let orbit = layout.solve(self)?;
+        let reading = reading::read(self, &layout, orbit.as_ref(), highest.max(1));
         let bound = match self.device_law {
             Some(_) => CURVED_BALANCE_BOUND,
             None => BALANCE_BOUND,
@@ -342,8 +237,8 @@ impl Stage {
     /// As [`Self::solve`].
     pub fn waveforms(&self) -> Result<Waveforms, StageError> {
         let layout = self.layout();
-        let orbit = self.solve_layout(&layout)?;
-        Ok(waveforms(&layout, orbit.as_ref()))
+        let orbit = layout.solve(self)?;
+        Ok(reading::waveforms(&layout, orbit.as_ref()))
     }
 
     /// The elements as the result object states them.
@@ -363,6 +258,13 @@ impl Stage {
             series_capacitor: capacitor(self.series_capacitor),
             drain_load: self.load,
             supply_v: self.supply_v,
+            cross: self
+                .pair
+                .map(|p| p.cross)
+                .filter(|c| c.value > 0.0)
+                .map(capacitor),
+            trap_coil: self.trap.map(|t| coil(t.coil)),
+            trap_capacitor: self.trap.map(|t| capacitor(t.capacitor)),
         }
     }
 }
@@ -376,186 +278,4 @@ pub struct Probed {
     pub supply_power_w: f64,
     /// Highest drain voltage, volts.
     pub drain_peak_v: f64,
-}
-
-/// Everything read off a solved stage.
-#[derive(Debug, Clone, PartialEq)]
-pub struct Reading {
-    /// What an engineer reads.
-    pub figures: Figures,
-    /// Where each watt goes.
-    pub losses: Losses,
-    /// Harmonics of the load current from the second on, dBc.
-    pub harmonics_dbc: Vec<f64>,
-    /// Unaccounted part of the supply power, relative.
-    pub balance: f64,
-    /// Drain voltage's harmonics from 0 on, volts.
-    pub drain_harmonics_v: Vec<f64>,
-    /// Load current's harmonics from 0 on, amperes.
-    pub load_harmonics_a: Vec<f64>,
-}
-
-fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: usize) -> Reading {
-    let drain = Probe::Voltage(layout.switch);
-    let square = |probe| orbit.mean_product(probe, probe);
-    let ohmic = |branch: usize, ohm: f64| ohm * square(Probe::Current(branch));
-    let absorbed = |branch| orbit.mean_product(Probe::Voltage(branch), Probe::Current(branch));
-
-    let supply_current_a = -orbit.mean(Probe::Current(layout.supply));
-    let supply_power_w = stage.supply_v * supply_current_a;
-    let total_output_power_w = ohmic(layout.load, stage.load.r_ohm);
-    let [load_harmonics_a, drain_harmonics_v] =
-        amplitudes(orbit, [Probe::Current(layout.load), drain], highest);
-    let carrier_a = load_harmonics_a[1];
-    let output_power_w = 0.5 * carrier_a * carrier_a * stage.load.r_ohm;
-    let (turn_on_v, turn_on_slope_v_per_s) = orbit.before_end(drain);
-
-    let discharged = Discharge::at_turn_on(stage, turn_on_v, layout, orbit);
-    let losses = Losses {
-        switch_w: absorbed(layout.switch) - discharged.in_switch_w,
-        turn_on_w: discharged.total_w,
-        turn_off_w: layout.fall.map_or(0.0, absorbed),
-        diode_w: layout.diode.map_or(0.0, absorbed),
-        feed_coil_w: ohmic(layout.feed, stage.feed.esr_ohm),
-        shunt_capacitor_w: layout.shunt.map_or(0.0, |b| ohmic(b, stage.shunt.esr_ohm))
-            - discharged.in_shunt_resistance_w,
-        series_coil_w: ohmic(layout.series_coil, stage.series_coil.esr_ohm),
-        series_capacitor_w: ohmic(layout.series_capacitor, stage.series_capacitor.esr_ohm),
-    };
-    let drain_range = orbit.extremes(drain);
-    let switch = Probe::Current(layout.switch);
-    let omega = TAU * stage.carrier_hz;
-    let figures = Figures {
-        supply_power_w,
-        supply_current_a,
-        output_power_w,
-        total_output_power_w,
-        drain_efficiency: output_power_w / supply_power_w,
-        drain_peak_v: drain_range.greatest,
-        constant_capacitance_peak_v: None,
-        drain_least_v: drain_range.least,
-        switch_peak_a: orbit.extremes(switch).greatest,
-        switch_rms_a: (square(switch) + layout.fall.map_or(0.0, |b| square(Probe::Current(b))))
-            .max(0.0)
-            .sqrt(),
-        turn_on_v,
-        turn_on_slope_v_per_s,
-        loaded_q: omega * stage.series_coil.value / stage.load.r_ohm,
-        diode_fraction: layout.diode.map_or(0.0, |b| orbit.conducting_fraction(b)),
-        junction_c: None,
-        gate_drive_w: None,
-        power_added_efficiency: None,
-    };
-    Reading {
-        balance: (supply_power_w - total_output_power_w - losses.total_w()) / supply_power_w,
-        harmonics_dbc: load_harmonics_a[2..]
-            .iter()
-            .map(|a| 20.0 * libm::log10(a / carrier_a))
-            .collect(),
-        figures,
-        losses,
-        drain_harmonics_v,
-        load_harmonics_a,
-    }
-}
-
-/// The energy of the shunt capacitance at turn-on, and where it goes.
-struct Discharge {
-    total_w: f64,
-    in_switch_w: f64,
-    in_shunt_resistance_w: f64,
-}
-
-impl Discharge {
-    fn at_turn_on(stage: &Stage, turn_on_v: f64, layout: &Layout, orbit: &dyn Orbit) -> Self {
-        let frequency = stage.carrier_hz;
-        let device_j = match &stage.device_law {
-            Some(law) => law.energy_j(turn_on_v),
-            None => 0.5 * stage.device_f * turn_on_v * turn_on_v,
-        };
-        let device_w = device_j * frequency;
-        let shunt_v = layout.shunt.map_or(0.0, |branch| {
-            let (current, _) = orbit.before_end(Probe::Current(branch));
-            turn_on_v - current * stage.shunt.esr_ohm
-        });
-        let shunt_w = 0.5 * stage.shunt.value * shunt_v * shunt_v * frequency;
-        // An ideal switch takes the energy of capacitors without resistance in a jump that
-        // no resistor sees; any other goes through the switch and the capacitor's own
-        // resistance in proportion.
-        let (ron, esr) = (stage.on_resistance_ohm, stage.shunt.esr_ohm);
-        let share = if ron > 0.0 { ron / (ron + esr) } else { 0.0 };
-        Self {
-            total_w: device_w + shunt_w,
-            in_switch_w: if ron > 0.0 {
-                device_w + share * shunt_w
-            } else {
-                0.0
-            },
-            in_shunt_resistance_w: if esr > 0.0 {
-                (1.0 - share) * shunt_w
-            } else {
-                0.0
-            },
-        }
-    }
-}
-
-/// Peak of each sinusoid, orders 0 (the mean) to `highest`.
-fn amplitudes<const M: usize>(
-    orbit: &dyn Orbit,
-    probes: [Probe; M],
-    highest: usize,
-) -> [Vec<f64>; M] {
-    let mut harmonics = orbit.harmonics(&probes, highest).into_iter();
-    probes.map(|_| {
-        let coefficients = harmonics.next().unwrap_or_default();
-        let size = |(order, c): (usize, Complex64)| {
-            if order == 0 {
-                c.norm_sqr().sqrt()
-            } else {
-                2.0 * c.norm_sqr().sqrt()
-            }
-        };
-        coefficients.into_iter().enumerate().map(size).collect()
-    })
-}
-
-fn waveforms(layout: &Layout, orbit: &dyn Orbit) -> Waveforms {
-    let capacitors = [layout.device, layout.shunt]
-        .into_iter()
-        .flatten()
-        .map(Probe::Current);
-    let load = [Some(layout.load), layout.load_reactance]
-        .into_iter()
-        .flatten()
-        .map(Probe::Voltage);
-    let (capacitors, load): (Vec<_>, Vec<_>) = (capacitors.collect(), load.collect());
-    let switch = [Some(layout.switch), layout.fall]
-        .into_iter()
-        .flatten()
-        .map(Probe::Current);
-    let switch: Vec<_> = switch.collect();
-    let mut probes = vec![Probe::Voltage(layout.switch)];
-    probes.extend(switch.iter().chain(&capacitors).chain(&load));
-    let curves = orbit.samples(&probes, SAMPLES);
-    let sum = |range: Range<usize>| {
-        let mut total = vec![0.0; SAMPLES + 1];
-        for curve in &curves[range] {
-            total
-                .iter_mut()
-                .zip(curve)
-                .for_each(|(sum, value)| *sum += value);
-        }
-        total
-    };
-    let capacitors_from = 1 + switch.len();
-    let load_from = capacitors_from + capacitors.len();
-    let step = orbit.period_s() / SAMPLES as f64;
-    Waveforms {
-        t_s: (0..=SAMPLES).map(|k| k as f64 * step).collect(),
-        drain_v: sum(0..1),
-        switch_a: sum(1..capacitors_from),
-        capacitor_a: sum(capacitors_from..load_from),
-        load_v: sum(load_from..probes.len()),
-    }
 }

@@ -216,7 +216,7 @@ fn a_state_that_nothing_determines_is_said() {
 }
 
 #[test]
-fn thirty_two_states_are_solved_and_thirty_three_refused() {
+fn any_number_of_states_is_solved() {
     // A ladder of RC sections, charged and discharged; its power balance must close.
     let ladder = |sections: usize| {
         let mut circuit = Circuit::default();
@@ -246,18 +246,23 @@ fn thirty_two_states_are_solved_and_thirty_three_refused() {
             (taken, lost)
         })
     };
-    for sections in [1, 3, 4, 5, 8, 9, 20, 32] {
+    for (sections, bound) in [
+        (1, 1e-11),
+        (3, 1e-11),
+        (4, 1e-11),
+        (5, 1e-11),
+        (8, 1e-11),
+        (9, 1e-11),
+        (16, 1e-11),
+        // Beyond these by steps, as where a charge law is followed.
+        (17, 1e-9),
+        (20, 1e-9),
+        (40, 1e-9),
+    ] {
         let (taken, lost) = ladder(sections).expect("an orbit");
         assert!(
-            taken > 0.0 && (lost / taken - 1.0).abs() < 1e-11,
+            taken > 0.0 && (lost / taken - 1.0).abs() < bound,
             "{sections}: {lost} of {taken}"
         );
     }
-    assert!(matches!(
-        ladder(33),
-        Err(OrbitError::TooManyStates {
-            states: 33,
-            most: 32
-        })
-    ));
 }

@@ -42,6 +42,7 @@ fn as_built() -> Design {
     let mut design = ideal();
     let v = solved(&design).values;
     design.fitted = evenfall_engine::design::Fitted {
+        cross: None,
         feed: Some(v.feed),
         shunt: Some(v.shunt),
         series_coil: Some(v.series_coil),

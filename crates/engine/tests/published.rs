@@ -196,6 +196,7 @@ fn small_losses() {
     let ideal = solved(&base).values;
     let mut built = base;
     built.fitted = evenfall_engine::design::Fitted {
+        cross: None,
         feed: Some(Coil {
             l_h: ideal.feed.l_h,
             esr_ohm: Some(r),
@@ -268,6 +269,7 @@ fn resonant_part_of_one_still_converts_well() {
     // Common practice: network Q as low as 1, excess reactance apart (recomputed: 92.5 %).
     let mut design = unit_design(0.5, 2.1525, choke(1e6));
     design.fitted = evenfall_engine::design::Fitted {
+        cross: None,
         feed: Some(Coil {
             l_h: 1e6,
             esr_ohm: None,

@@ -40,6 +40,10 @@ fn stage(dice: &mut Dice) -> Stage {
         fall_s: 0.0,
         device_f: 0.0,
         device_law: None,
+        trap: None,
+        pair: None,
+        uppers: Vec::new(),
+        threshold_v: 0.0,
         diode: Some(Diode {
             forward_v: dice.between(0.4, 1.0),
             slope_ohm: r * dice.between(0.001, 0.05),
@@ -107,6 +111,10 @@ fn frequency_impedance_and_voltage_only_scale() {
             fall_s: a.fall_s / f,
             device_f: 0.0,
             device_law: None,
+            trap: None,
+            pair: None,
+            uppers: Vec::new(),
+            threshold_v: 0.0,
             diode: a.diode.map(|d| Diode {
                 forward_v: d.forward_v * v,
                 slope_ohm: d.slope_ohm * z,

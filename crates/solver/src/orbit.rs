@@ -55,13 +55,6 @@ pub struct Extremes {
 pub enum OrbitError {
     /// The circuit has no equations.
     Dynamics(DynamicsError),
-    /// More states than the solver holds.
-    TooManyStates {
-        /// States of the circuit.
-        states: usize,
-        /// The most it holds.
-        most: usize,
-    },
     /// The two sides of the circuit do not take each other's place.
     Sides,
     /// A clock step of no or unending duration.
@@ -96,12 +89,6 @@ impl fmt::Display for OrbitError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::Dynamics(error) => error.fmt(f),
-            Self::TooManyStates { states, most } => {
-                write!(
-                    f,
-                    "the circuit has {states} states, more than the {most} that the solver holds"
-                )
-            }
             Self::Clock { duration_s } => {
                 write!(f, "a clock step of {duration_s} s cannot be solved")
             }
@@ -188,9 +175,6 @@ pub trait Orbit {
     fn jump_energy_j(&self) -> f64;
 }
 
-/// The most states that [`solve`] takes.
-pub const MOST_STATES: usize = 32;
-
 /// The periodic steady state of `circuit` under the clock.
 ///
 /// # Errors
@@ -223,14 +207,13 @@ fn solve_with(
     if circuit.varying().next().is_some() {
         return Ok(Box::new(curved::solve(circuit, clock, mirror)?));
     }
-    let states = circuit.state_count();
     macro_rules! sized {
         ($($n:literal),*) => {
-            match states + 1 {
+            match circuit.state_count() + 1 {
                 $(n if n <= $n => Ok(Box::new(shoot::solve::<$n>(circuit, clock, mirror)?) as Box<dyn Orbit>),)*
-                _ => Err(OrbitError::TooManyStates { states, most: MOST_STATES }),
+                _ => Ok(Box::new(curved::solve(circuit, clock, mirror)?)),
             }
         };
     }
-    sized!(5, 9, 33)
+    sized!(5, 9, 17)
 }

@@ -12,6 +12,8 @@ const ROUNDING: f64 = 1e-6;
 /// The same where a charge law is followed in steps.
 const CURVED_MET: f64 = 1e-8;
 const MOST_ITERATIONS: usize = 40;
+/// The other load at which a load-independent stage switches at zero voltage, over its own.
+const OTHER_LOAD: f64 = 3.0;
 const LONGEST: f64 = 0.5;
 /// Least 1/(w C2 R): below it the series capacitor has become a blocking capacitor.
 const LEAST_ELASTANCE: f64 = 1e-7;
@@ -22,6 +24,8 @@ pub(super) enum Unknown {
     Shunt,
     Reactance,
     Load,
+    /// The feed coil's resonance with the shunt.
+    Feed,
     /// Only in the search for the least loaded Q: the coil moves, the capacitor blocks.
     LoadedQ,
 }
@@ -31,6 +35,8 @@ pub(super) struct Search<'a> {
     pub(super) problem: &'a Problem,
     pub(super) unknowns: Vec<Unknown>,
     pub(super) seeks_power: bool,
+    /// Whether the turn-on voltage is to be zero at another load as well.
+    pub(super) seeks_load_range: bool,
 }
 
 /// Newton's method found nothing; the least that remained of the conditions.
@@ -61,11 +67,17 @@ impl Search<'_> {
                 return None;
             }
         }
-        let (turn_on_v, slope, power_w) = self.stage(point, way).turn_on().ok()?;
+        let stage = self.stage(point, way);
+        let (turn_on_v, slope, power_w) = stage.turn_on().ok()?;
         let v = point.supply_v;
         let mut conditions = vec![turn_on_v / v, slope / (v * self.problem.omega())];
         if self.seeks_power {
             conditions.push(power_w / self.problem.power_w? - 1.0);
+        }
+        if self.seeks_load_range {
+            let mut light = stage;
+            light.load.r_ohm *= OTHER_LOAD;
+            conditions.push(light.turn_on().ok()?.0 / v);
         }
         let conditions = DVector::from_vec(conditions);
         conditions
@@ -86,6 +98,7 @@ impl Search<'_> {
         let mut moved = *point;
         match unknown {
             Unknown::Shunt => moved.shunt *= libm::exp(step),
+            Unknown::Feed => moved.feed_q *= libm::exp(step),
             Unknown::Reactance | Unknown::LoadedQ => moved.reactance += step,
             Unknown::Load => {
                 let factor = libm::exp(step);

@@ -7,7 +7,7 @@
 
 use super::newton::{Missed, Search, Unknown};
 use super::problem::{Point, Problem, Way};
-use super::{SizingError, ideal};
+use super::{Ideal, SizingError, ideal};
 use crate::design::Feed;
 use crate::stage::Stage;
 
@@ -75,13 +75,27 @@ fn size_at(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingEr
     if !shunt_pinned {
         unknowns.push(Unknown::Shunt);
     }
-    if !branch_pinned {
+    if problem.seeks_feed() {
+        if shunt_pinned
+            || branch_pinned
+            || pins.series_coil.is_some()
+            || pins.series_capacitor.is_some()
+        {
+            return Err(SizingError::Field {
+                field: "stage.feed",
+                reason: "with this feed the shunt capacitor and the series branch follow from it: free them, or choose another feed".into(),
+            });
+        }
+        unknowns.push(Unknown::Feed);
+    }
+    let parallel = problem.pins.feed.is_none() && problem.feed == Feed::Parallel {};
+    if !branch_pinned && !parallel {
         unknowns.push(Unknown::Reactance);
     }
     let mut seeks_power = problem.seeks_load();
     if problem.seeks_load() {
         unknowns.push(Unknown::Load);
-        if unknowns.len() == 2 {
+        if shunt_pinned || branch_pinned {
             seeks_power = false;
             notes.push(
                 "With this many parts pinned the power is what they give, not what was asked."
@@ -99,14 +113,16 @@ fn size_at(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingEr
         problem,
         unknowns,
         seeks_power,
+        seeks_load_range: problem.pins.feed.is_none() && problem.feed == Feed::LoadIndependent {},
     };
-    point = match &problem.device_law {
-        Some(_) => bend(&search, point)?,
-        None => arrive(&search, point)?,
+    point = if problem.bends() {
+        bend(&search, point)?
+    } else {
+        arrive(&search, point)?
     };
     let stage = problem.stage(&point, problem.bent());
     if !shunt_pinned {
-        let needed_f = point.shunt / (problem.omega() * point.load_ohm);
+        let needed_f = point.shunt * problem.sides() / (problem.omega() * point.load_ohm);
         if needed_f < problem.device_f * (1.0 - 1e-9) {
             return Err(SizingError::Capacitance {
                 device_f: problem.device_f,
@@ -200,15 +216,45 @@ fn with_supply(problem: &Problem, stage: Stage) -> Result<Stage, SizingError> {
 }
 
 fn start(problem: &Problem) -> Point {
-    let ideal = ideal(problem.duty);
+    // The two feeds that are found with the stage, at infinite loaded Q and half duty: Grebennikov
+    // and Sokal 2007; Zulinski and Grady 1990 (values from memory, recomputed).
+    let (ideal, feed_q) = match problem.feed {
+        Feed::Parallel {} => {
+            let (shunt, reactance, power) = (0.68408, 0.0, 1.36324);
+            (
+                Ideal {
+                    shunt,
+                    reactance,
+                    power,
+                },
+                1.41193,
+            )
+        }
+        Feed::LoadIndependent {} => {
+            let (shunt, reactance, power) = (0.5781, 0.2761, 1.2633);
+            (
+                Ideal {
+                    shunt,
+                    reactance,
+                    power,
+                },
+                1.2915,
+            )
+        }
+        _ => (ideal(problem.duty), 1.0),
+    };
+    let sides = problem.sides();
     let supply_v = problem.expected_supply_v();
     let load_ohm = match (problem.pins.drain_load, problem.power_w) {
         (Some(load), _) => load.r_ohm,
-        (None, Some(power)) => ideal.power * supply_v * supply_v / power,
+        (None, Some(power)) => sides * sides * ideal.power * supply_v * supply_v / power,
         (None, None) => 1.0,
     };
     let shunt = match problem.pins.shunt {
-        Some(pin) => problem.omega() * (pin.c_f + problem.device_f) * load_ohm,
+        Some(pin) => {
+            let cross_f = pins_cross(problem);
+            problem.omega() * (pin.c_f + cross_f + problem.device_f) * load_ohm / sides
+        }
         None => ideal.shunt,
     };
     Point {
@@ -216,7 +262,13 @@ fn start(problem: &Problem) -> Point {
         reactance: ideal.reactance - problem.load_x() / load_ohm,
         load_ohm,
         supply_v,
+        feed_q,
     }
+}
+
+/// A pinned capacitor between the drains, farads.
+fn pins_cross(problem: &Problem) -> f64 {
+    problem.pins.cross.map_or(0.0, |c| c.c_f)
 }
 
 /// What is pinned leaves no room: say what the pinned shunt would have to be.
@@ -254,6 +306,7 @@ fn bend(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
                 problem: &more,
                 unknowns: search.unknowns.clone(),
                 seeks_power: search.seeks_power,
+                seeks_load_range: search.seeks_load_range,
             };
             (arrive(&above, start)?, ABOVE * least)
         }
@@ -266,6 +319,7 @@ fn bend(search: &Search<'_>, start: Point) -> Result<Point, SizingError> {
     };
     let point = walk(search, from, law).map_err(|stalled| SizingError::Law {
         share: stalled.way.bend,
+        stack: problem.stack.is_some(),
     })?;
     if missing == problem.loaded_q {
         return Ok(point);
@@ -370,6 +424,7 @@ fn loaded_q_error(search: &Search<'_>, stalled: &Stalled) -> SizingError {
         problem,
         unknowns,
         seeks_power: search.seeks_power,
+        seeks_load_range: search.seeks_load_range,
     }
     .newton(stalled.point, stalled.way)
     .ok()
@@ -412,6 +467,7 @@ fn by_load(
         problem,
         unknowns,
         seeks_power: false,
+        seeks_load_range: search.seeks_load_range,
     };
     let lossy = |t: f64| Way {
         bend: 0.0,
@@ -468,7 +524,8 @@ fn feed_error(problem: &Problem, stalled: &Stalled) -> SizingError {
         _ => format!(
             "so small a feed coil; the smallest that was found is {:.4} µH, {:.3} times the load in reactance",
             problem.feed_l(&stalled.point, stalled.way) * 1e6,
-            problem.feed_l(&stalled.point, stalled.way) * problem.omega() / stalled.point.load_ohm
+            problem.feed_l(&stalled.point, stalled.way) * problem.omega() * problem.sides()
+                / stalled.point.load_ohm
         ),
     };
     SizingError::Feed {
@@ -537,5 +594,6 @@ fn extrapolate(old: &Point, now: &Point, share: f64) -> Point {
         reactance: now.reactance + share * (now.reactance - old.reactance),
         load_ohm: ratio(old.load_ohm, now.load_ohm),
         supply_v: now.supply_v,
+        feed_q: ratio(old.feed_q, now.feed_q),
     }
 }

@@ -1,10 +1,11 @@
 //! What is given and what is to be found: a design in the form that the solver takes.
 
 use super::SizingError;
+use super::stack::Stack;
 use super::thermal::Thermal;
 use crate::charge::{ChargeLaw, LawError};
-use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load};
-use crate::stage::{Part, Stage};
+use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load, Mismatch};
+use crate::stage::{Pair, Part, Stage, Trap, Upper};
 use std::f64::consts::TAU;
 
 /// A design, checked, with its unknowns named.
@@ -21,7 +22,14 @@ pub(super) struct Problem {
     pub(super) capacitor_q: Option<f64>,
     pub(super) on_resistance_ohm: f64,
     pub(super) fall_s: f64,
-    /// Output capacitance, with a charge law the one of the same energy at the expected peak.
+    /// The second side, where there is one; `cross.value` is the share of the fitted shunt
+    /// susceptance that lies between the drains.
+    pub(super) pair: Option<Pair>,
+    pub(super) trap_ratio: Option<f64>,
+    pub(super) stack: Option<Stack>,
+    /// Output capacitance of the lowest switch.
+    pub(super) low_f: f64,
+    /// Output capacitance as the drain sees it, with a charge law the one of the same energy at the expected peak.
     pub(super) device_f: f64,
     pub(super) device_law: Option<ChargeLaw>,
     pub(super) diode: Option<Diode>,
@@ -32,18 +40,21 @@ pub(super) struct Problem {
     pub(super) notes: Vec<String>,
 }
 
-/// A point of the search. `shunt` is w C1 R of the whole shunt capacitance, `reactance`
-/// the series branch's net reactance over R.
+/// A point of the search. `shunt` is w C1 R of the whole shunt capacitance of a side and what
+/// it sees of the load, `reactance` the series branch's net reactance over R, `feed_q` the feed
+/// coil's resonance with the shunt where that is sought.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Point {
     pub(super) shunt: f64,
     pub(super) reactance: f64,
     pub(super) load_ohm: f64,
     pub(super) supply_v: f64,
+    pub(super) feed_q: f64,
 }
 
 /// Where between the ideal stage and the wanted one: losses and feed from 0 (ideal) to 1
-/// (wanted), the loaded Q, and the device's capacitance from constant (0) to its law (1).
+/// (wanted), the loaded Q, and the device from one switch
+/// with a constant capacitance (0) to its stack or charge law (1).
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(super) struct Way {
     pub(super) bend: f64,
@@ -52,16 +63,16 @@ pub(super) struct Way {
     pub(super) loaded_q: f64,
 }
 
-fn field(field: &'static str, reason: String) -> SizingError {
+pub(super) fn field(field: &'static str, reason: String) -> SizingError {
     SizingError::Field { field, reason }
 }
 
 /// A positive finite number, or the sentence that says it is not.
-fn positive(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
+pub(super) fn positive(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
     in_range(path, what, value, 1e-30, 1e30)
 }
 
-fn in_range(
+pub(super) fn in_range(
     path: &'static str,
     what: &str,
     value: f64,
@@ -83,7 +94,7 @@ fn in_range(
     }
 }
 
-fn not_negative(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
+pub(super) fn not_negative(path: &'static str, what: &str, value: f64) -> Result<f64, SizingError> {
     if (0.0..=1e30).contains(&value) {
         Ok(value)
     } else {
@@ -108,21 +119,63 @@ impl Problem {
                 ),
             ));
         }
-        if stage.form == Form::Differential {
+        let differential = stage.form == Form::Differential;
+        let trap_ratio = stage
+            .trap_ratio
+            .map(|k| {
+                in_range(
+                    "stage.trap_ratio",
+                    "the shunt over the trap capacitance",
+                    k,
+                    0.01,
+                    100.0,
+                )
+            })
+            .transpose()?;
+        if trap_ratio.is_some() && stage.stack > 1 {
             return Err(field(
-                "stage.form",
-                "the form `differential` is not solved yet".into(),
+                "stage.trap_ratio",
+                "a trap across a stack of switches is not solved: take one or the other".into(),
             ));
         }
-        if stage.stack != 1 {
-            return Err(field(
-                "stage.stack",
-                format!(
-                    "a stack of {} switches is not solved yet; 1 is",
-                    stage.stack
-                ),
-            ));
-        }
+        let pair = if differential {
+            let Mismatch {
+                on_resistance,
+                duty,
+                capacitance,
+            } = stage.mismatch;
+            for part in [on_resistance, duty, capacitance] {
+                in_range(
+                    "stage.mismatch",
+                    "a difference of the second side",
+                    part,
+                    -0.5,
+                    0.5,
+                )?;
+            }
+            Some(Pair {
+                feed_coupling: in_range(
+                    "stage.feed_coupling",
+                    "the coupling of the feed coils",
+                    stage.feed_coupling,
+                    -0.99,
+                    0.99,
+                )?,
+                cross: Part {
+                    value: in_range(
+                        "stage.cross_share",
+                        "the share of the capacitor between the drains",
+                        stage.cross_share,
+                        0.0,
+                        1.0,
+                    )?,
+                    esr_ohm: 0.0,
+                },
+                mismatch: stage.mismatch,
+            })
+        } else {
+            None
+        };
         let law = |law: Result<ChargeLaw, LawError>| {
             law.map(Some)
                 .map_err(|e| field("device.capacitance", e.to_string()))
@@ -211,6 +264,7 @@ impl Problem {
                 positive("stage.feed", "the feed inductance", l_h)?;
                 stage.feed
             }
+            Feed::Parallel {} | Feed::LoadIndependent {} => stage.feed,
         };
         let mut problem = Self {
             carrier_hz: in_range(
@@ -243,8 +297,12 @@ impl Problem {
                 "the fall time",
                 device.fall_time_s.unwrap_or(0.0),
             )?,
+            stack: Stack::of(design, constant_f, device_law.is_some())?,
+            low_f: constant_f,
             device_f: constant_f,
             device_law,
+            pair,
+            trap_ratio,
             diode,
             drain_limit_v: device
                 .rating_v
@@ -264,15 +322,27 @@ impl Problem {
     pub(super) fn expected_supply_v(&self) -> f64 {
         let load_ohm = self.pins.drain_load.map_or(1.0, |l| l.r_ohm);
         let power = self.power_w.unwrap_or(1.0);
-        self.supply_v
-            .unwrap_or_else(|| (power * load_ohm / super::ideal(self.duty).power).sqrt())
+        self.supply_v.unwrap_or_else(|| {
+            (power * load_ohm / super::ideal(self.duty).power).sqrt() / self.sides()
+        })
+    }
+
+    /// Number of sides.
+    pub(super) fn sides(&self) -> f64 {
+        if self.pair.is_some() { 2.0 } else { 1.0 }
     }
 
     /// The typical capacitance of a charge law: the one of the same energy at the peak of the
     /// ideal stage at half duty, 3.56 times the supply (Raab 1977).
     fn settle_device(&mut self) {
+        let peak_v = 3.56 * self.expected_supply_v();
         if let Some(law) = &self.device_law {
-            self.device_f = law.energy_equivalent_f(3.56 * self.expected_supply_v());
+            self.device_f = law.energy_equivalent_f(peak_v);
+            self.low_f = self.device_f;
+        }
+        if let Some(stack) = &mut self.stack {
+            stack.start(peak_v);
+            self.device_f = stack.drain_f(self.low_f);
         }
     }
 
@@ -367,6 +437,12 @@ impl Problem {
         self.pins.drain_load.is_none()
     }
 
+    /// Whether the feed coil is found together with the stage.
+    pub(super) fn seeks_feed(&self) -> bool {
+        self.pins.feed.is_none()
+            && matches!(self.feed, Feed::Parallel {} | Feed::LoadIndependent {})
+    }
+
     /// The series branch at a point: w L2 / R and 1/(w C2 R). The second is not positive
     /// where the point asks for more reactance than the coil has.
     pub(super) fn branch(&self, point: &Point, way: Way) -> (f64, f64) {
@@ -382,7 +458,12 @@ impl Problem {
         }
     }
 
-    /// The end of the way but for the device's charge law.
+    /// Whether the device is more than a switch with a constant capacitance.
+    pub(super) fn bends(&self) -> bool {
+        self.device_law.is_some() || self.stack.is_some()
+    }
+
+    /// The end of the way but for the device's charge law or stack.
     pub(super) fn wanted(&self) -> Way {
         Way {
             bend: 0.0,
@@ -409,7 +490,7 @@ impl Problem {
     /// The feed coil at a point, henries.
     pub(super) fn feed_l(&self, point: &Point, way: Way) -> f64 {
         let omega = self.omega();
-        let scale = point.load_ohm / omega;
+        let scale = point.load_ohm / self.sides() / omega;
         let wanted = match (self.pins.feed, self.feed) {
             (Some(pin), _) => pin.l_h,
             (None, Feed::Choke { reactance_ratio }) => reactance_ratio * scale,
@@ -418,6 +499,9 @@ impl Problem {
                 return scale / (q * q * point.shunt);
             }
             (None, Feed::Inductance { l_h }) => l_h,
+            (None, Feed::Parallel {} | Feed::LoadIndependent {}) => {
+                return scale / (point.feed_q * point.feed_q * point.shunt);
+            }
         };
         if way.feed >= 1.0 {
             return wanted;
@@ -431,7 +515,7 @@ impl Problem {
         let omega = self.omega();
         let r = point.load_ohm;
         let (coil_x, capacitor_x) = self.branch(point, way);
-        let total_f = point.shunt / (omega * r);
+        let total_f = point.shunt / (omega * r / self.sides());
         let loss = |q: Option<f64>| q.map_or(0.0, |q| way.losses / q);
         let coil = |l_h: f64, pin: Option<Coil>| Part {
             value: l_h,
@@ -455,24 +539,74 @@ impl Problem {
         } else {
             total_f
         };
+        let share = if self.device_f > 0.0 {
+            device_f / self.device_f
+        } else {
+            1.0
+        };
+        // At half duty one drain is always at ground, so that a capacitor between the drains does
+        // what one on either side would.
+        let pair = self.pair.map(|pair| {
+            let cross_f = match (self.pins.cross, self.pins.shunt) {
+                (Some(pin), _) => pin.c_f,
+                (None, Some(_)) => 0.0,
+                (None, None) => pair.cross.value * shunt_f.max(0.0),
+            };
+            Pair {
+                cross: capacitor(cross_f, self.pins.cross.and_then(|p| p.esr_ohm)),
+                ..pair
+            }
+        });
+        let side_f = match (self.pins.shunt, &pair) {
+            (None, Some(pair)) => shunt_f - pair.cross.value,
+            _ => shunt_f,
+        };
+        let trap = self.trap_ratio.map(|ratio| {
+            let farad = total_f / ratio;
+            Trap {
+                coil: coil(1.0 / (4.0 * omega * omega * farad), None),
+                capacitor: capacitor(farad, None),
+            }
+        });
+        // Before the bend a stack is one switch of the same resistance and capacitance.
+        let stacked = self.stack.iter().flat_map(|stack| &stack.uppers);
+        let upper_ohm: f64 = stacked.clone().map(|u| u.on_resistance_ohm).sum();
+        let (low_f, more_ohm) = if way.bend > 0.0 {
+            (self.low_f * share, 0.0)
+        } else {
+            (device_f, upper_ohm)
+        };
+        let uppers = stacked
+            .filter(|_| way.bend > 0.0)
+            .map(|upper| Upper {
+                on_resistance_ohm: upper.on_resistance_ohm,
+                across_f: upper.across_f * share,
+                node_f: upper.node_f * share,
+                ..*upper
+            })
+            .collect();
         Stage {
             carrier_hz: self.carrier_hz,
             duty: self.duty,
             supply_v: point.supply_v,
-            on_resistance_ohm: self.on_resistance_ohm * way.losses,
+            on_resistance_ohm: (self.on_resistance_ohm + more_ohm) * way.losses,
             fall_s: self.fall_s * way.losses,
-            device_f,
+            device_f: low_f,
             device_law: self
                 .device_law
                 .as_ref()
                 .filter(|_| way.bend > 0.0)
                 .map(|law| {
-                    law.scaled(way.bend * device_f / self.device_f)
+                    law.scaled(way.bend * share)
                         .beside((1.0 - way.bend) * device_f)
                 }),
+            pair,
+            trap,
+            uppers,
+            threshold_v: self.stack.as_ref().map_or(0.0, |s| s.threshold_v),
             diode: None,
             feed: coil(feed_l, self.pins.feed),
-            shunt: capacitor(shunt_f.max(0.0), self.pins.shunt.and_then(|p| p.esr_ohm)),
+            shunt: capacitor(side_f.max(0.0), self.pins.shunt.and_then(|p| p.esr_ohm)),
             series_coil: coil(coil_x * r / omega, self.pins.series_coil),
             series_capacitor: capacitor(
                 1.0 / (omega * r * capacitor_x),

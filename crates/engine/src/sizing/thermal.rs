@@ -54,6 +54,9 @@ pub(super) fn settle<T>(
     let mut at = |junction_c: f64| {
         let mut warm = problem.clone();
         warm.on_resistance_ohm *= thermal.factor(junction_c);
+        for upper in warm.stack.iter_mut().flat_map(|s| &mut s.uppers) {
+            upper.on_resistance_ohm *= thermal.factor(junction_c);
+        }
         let answer = trial(&warm)?;
         let rises_to = thermal.ambient_c + thermal.k_per_w * device_w(&losses(&answer));
         Ok::<_, SizingError>((answer, rises_to))

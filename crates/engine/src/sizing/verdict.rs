@@ -44,11 +44,41 @@ pub fn judge(design: &Design, stage: &Stage, reading: &Reading) -> Vec<Verdict> 
             )
         },
     );
-    if let Some(rating) = design.device.rating_v {
+    let upper_rating = design
+        .device
+        .upper
+        .and_then(|u| u.rating_v)
+        .or(design.device.rating_v);
+    // Each switch of a stack by itself, or the one there is.
+    let mut rated: Vec<(String, f64, Option<f64>)> = reading
+        .detail
+        .stack
+        .iter()
+        .enumerate()
+        .map(|(k, stress)| {
+            let rating = if k == 0 {
+                design.device.rating_v
+            } else {
+                upper_rating
+            };
+            let name = format!("drain voltage of switch {}", k + 1);
+            (name, stress.drain_source_v, rating)
+        })
+        .collect();
+    if rated.is_empty() {
+        rated.push((
+            "drain voltage".to_owned(),
+            figures.drain_peak_v,
+            design.device.rating_v,
+        ));
+    }
+    for (name, peak, rating) in rated {
+        let Some(rating) = rating else {
+            continue;
+        };
         let bound = rating * limits.drain_fraction_of_rating;
-        let peak = figures.drain_peak_v;
         add(
-            "drain voltage",
+            &name,
             peak,
             bound,
             peak <= bound,

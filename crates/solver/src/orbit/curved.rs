@@ -1,4 +1,5 @@
-//! The periodic steady state where a capacitance depends on its voltage.
+//! The periodic steady state where a capacitance depends on its voltage, and of circuits with
+//! more states than are worth a solver of fixed size.
 //!
 //! Each stretch is cut into steps of Radau collocation (`step`), halved until the polynomial
 //! through a step's nodes has died out in its last term. The cuts of one period serve the next,
@@ -43,8 +44,12 @@ const LAST_TERM: f64 = 3e-6;
 /// How much less where the law has knots: there the terms die out slowly, and the last one says
 /// little of those that follow.
 const KNOTTED: f64 = 1e-2;
+/// And where no law stands in the way of the bound that holds for linear circuits.
+const LINEAR: f64 = 1e-3;
 /// The same of the curve itself, whatever follows from it.
 const WORST_TERM: f64 = 1e-3;
+/// What counts as next to nothing, as a share of the root of the greatest energy.
+const TRIFLE: f64 = 1e-5;
 /// Rounding of a guard, relative to its largest term.
 const GUARD_ROUNDING: f64 = 1e-9;
 const GUARD_STEPS: usize = 6;
@@ -101,7 +106,8 @@ struct Solver<'a> {
     sizes: Vec<f64>,
     /// Multiple of the bounds on the last term: the first periods need not be fine.
     loose: f64,
-    knots: f64,
+    /// Multiple of them that the circuit asks for.
+    fine: f64,
 }
 
 struct Lap {
@@ -141,8 +147,14 @@ pub(super) fn solve(
     clock: &[ClockStep],
     mirror: Option<&Mirror>,
 ) -> Result<Solution, OrbitError> {
-    let typical = super::solve_with(&constant(circuit), clock, mirror)?;
     let states = circuit.state_count();
+    // Without a varying capacitor the period map is as good as linear, and any start will do.
+    let (start, sizes) = if circuit.laws.is_empty() {
+        (vec![0.0; states], vec![0.0; states])
+    } else {
+        let typical = super::solve_with(&constant(circuit), clock, mirror)?;
+        (typical.start(), typical.sizes())
+    };
     let switching = circuit.switching_branches();
     let (capacitors, inductors) = circuit.state_branches();
     let (mut masses, mut varying) = (vec![0.0; states], Vec::new());
@@ -161,7 +173,7 @@ pub(super) fn solve(
             _ => 0.0,
         };
     }
-    let start = DVector::from_vec(typical.start());
+    let start = DVector::from_vec(start);
     let mut solver = Solver {
         circuit,
         clock,
@@ -171,9 +183,11 @@ pub(super) fn solve(
         masses,
         modes: Vec::new(),
         plans: clock.iter().map(|_| Plan::default()).collect(),
-        sizes: typical.sizes(),
+        sizes,
         loose: LOOSE,
-        knots: if circuit.laws.iter().all(ChargeLaw::is_smooth) {
+        fine: if circuit.laws.is_empty() {
+            LINEAR
+        } else if circuit.laws.iter().all(ChargeLaw::is_smooth) {
             1.0
         } else {
             KNOTTED
@@ -422,11 +436,22 @@ impl Solver<'_> {
             (sum + SPREAD[0] * start[k]) / (1u64 << (2 * S - 1)) as f64
         });
         let added = &self.modes[mode].a * &last * length;
+        let size = |k: usize| {
+            let end = nodes.states[(S - 1) * n + k].abs();
+            self.sizes[k].max(start[k].abs()).max(end)
+        };
+        // Next to nothing is a trifle of what would hold the energy of the others.
+        let energy = (0..n).map(|k| self.masses[k] * size(k) * size(k));
+        let root = TRIFLE * energy.fold(0.0, f64::max).sqrt();
         (0..n)
             .map(|k| {
-                let end = nodes.states[(S - 1) * n + k].abs();
-                let size = self.sizes[k].max(start[k].abs()).max(end);
-                let bound = LAST_TERM * size * self.loose * self.knots + f64::MIN_POSITIVE;
+                let least = if self.masses[k] > 0.0 {
+                    root / self.masses[k].sqrt()
+                } else {
+                    0.0
+                };
+                let size = size(k).max(least);
+                let bound = LAST_TERM * size * self.loose * self.fine + f64::MIN_POSITIVE;
                 let worst = WORST_TERM * size * self.loose.sqrt() + f64::MIN_POSITIVE;
                 (added[k].abs() / bound).max(last[k].abs() / worst)
             })

@@ -203,6 +203,9 @@ impl Step {
         let count = S * m;
         let last = (S - 1) * n;
         let mut end = self.from.rows(last, n).into_owned();
+        if count == 0 {
+            return Some(end);
+        }
         let at_start: Vec<f64> = varying.iter().map(|v| v.excess(start[v.state]).1).collect();
         let mut right = vec![0.0; count * n];
         for (at, right) in right.chunks_exact_mut(n).enumerate() {
