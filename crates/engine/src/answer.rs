@@ -66,7 +66,7 @@ pub struct Solved {
 }
 
 /// The elements of the stage, every series resistance filled in.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Values {
     /// Feed coil.
     pub feed: Coil,
@@ -83,6 +83,15 @@ pub struct Values {
     /// Capacitor between the drains of a differential stage.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub cross: Option<Capacitor>,
+    /// Width of each switch, metres, where the device is known by its width.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub width_m: Option<f64>,
+    /// Number of stacked switches, where there is more than one.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub stack: Option<usize>,
+    /// Gate supplies of the upper switches, volts, from the ground up.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    pub gate_supplies_v: Vec<f64>,
     /// Coil of the trap across the switch.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub trap_coil: Option<Coil>,

@@ -144,6 +144,10 @@ pub struct Device {
     /// Time in which the switch current falls to zero at turn-off, seconds. Default: 0.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub fall_time_s: Option<f64>,
+    /// The switch by its width; on-resistance, capacitance, gate charge and `node_f` then follow
+    /// from it, and the data of `upper` are per width too. Default: not given.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub per_width: Option<PerWidth>,
     /// The switches above the lowest of a stack. Default: like the lowest, with its capacitance.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub upper: Option<Upper>,
@@ -158,16 +162,34 @@ pub struct Device {
     pub junction_to_ambient_k_per_w: Option<f64>,
 }
 
+/// A switch known by its width.
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct PerWidth {
+    /// On-resistance times width, ohm metres.
+    pub on_resistance_ohm_m: f64,
+    /// Output capacitance per width, farads per metre (at 0 V where a junction law is given).
+    pub output_f_per_m: f64,
+    /// Gate capacitance per width, farads per metre. Default: 0.
+    pub gate_f_per_m: f64,
+    /// Width, metres. Default: the one of least loss.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub width_m: Option<f64>,
+    /// Whether the number of stacked switches is chosen too, under the voltage limit of each.
+    /// Default: no.
+    pub choose_stack: bool,
+}
+
 /// An upper switch of a stack, with data of its own.
-#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
+#[derive(Debug, Clone, Copy, PartialEq, Default, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
 pub struct Upper {
     /// On-resistance, ohms.
     pub on_resistance_ohm: f64,
     /// Capacitance across it, farads.
     pub across_f: f64,
     /// Greatest voltage across it, volts. Default: that of the lowest.
-    #[serde(default, skip_serializing_if = "Option::is_none")]
+    #[serde(skip_serializing_if = "Option::is_none")]
     pub rating_v: Option<f64>,
 }
 

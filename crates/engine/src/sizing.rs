@@ -6,6 +6,9 @@
 //! in closed form ([`ideal`]); where that is too far, feed, loaded Q and losses are moved
 //! from the ideal to the wanted ones in steps.
 
+mod alternatives;
+mod assembly;
+mod checks;
 mod ideal;
 mod least_loss;
 mod newton;
@@ -14,11 +17,13 @@ mod problem;
 mod stack;
 mod thermal;
 mod verdict;
+mod width;
 
+pub use alternatives::{Alternative, COUNT as ALTERNATIVES, alternative, alternatives};
 pub use ideal::{Ideal, ideal};
 pub use verdict::judge;
 
-use crate::answer::{Answer, Refusal, Solved, Waveforms};
+use crate::answer::{Answer, Refusal, Solved, Values, Waveforms};
 use crate::design::{Aim, Design, Feed};
 use crate::stage::{Reading, Stage, StageError};
 use problem::Problem;
@@ -226,11 +231,31 @@ impl std::error::Error for SizingError {}
 
 /// Sizes and solves a design: the whole answer, as the design file's result object states it.
 pub fn solve(design: &Design) -> Answer {
-    match sized(design) {
-        Ok((stage, reading, waveforms, notes)) => {
+    let answer = settled(design).and_then(|sized| {
+        let waveforms = sized.stage.waveforms().map_err(SizingError::Stage)?;
+        Ok((sized, waveforms))
+    });
+    match answer {
+        Ok((sized, waveforms)) => {
+            let Sized {
+                stage,
+                reading,
+                notes,
+                width_m,
+            } = sized;
             let verdicts = judge(design, &stage, &reading);
+            let values = Values {
+                width_m,
+                stack: (!stage.uppers.is_empty()).then_some(stage.uppers.len() + 1),
+                gate_supplies_v: stage
+                    .uppers
+                    .iter()
+                    .map(|u| u.clamp_v + stage.threshold_v)
+                    .collect(),
+                ..stage.values()
+            };
             Answer::Solved(Solved {
-                values: stage.values(),
+                values,
                 figures: reading.figures,
                 losses: reading.losses,
                 harmonics_dbc: reading.harmonics_dbc,
@@ -285,12 +310,20 @@ fn drive(design: &Design) -> Result<Option<f64>, SizingError> {
     }
 }
 
+/// A sized stage with all that is known of it.
+struct Sized {
+    stage: Stage,
+    reading: Reading,
+    notes: Vec<String>,
+    width_m: Option<f64>,
+}
+
 /// The stage of a design with its reading.
 ///
 /// # Errors
 /// See [`SizingError`].
 pub fn sized_stage(design: &Design) -> Result<(Stage, Reading), SizingError> {
-    settled(design).map(|(stage, reading, _)| (stage, reading))
+    settled(design).map(|sized| (sized.stage, sized.reading))
 }
 
 /// The stage of a design, its reading, its curves, and what the person should know about it.
@@ -298,13 +331,21 @@ pub fn sized_stage(design: &Design) -> Result<(Stage, Reading), SizingError> {
 /// # Errors
 /// See [`SizingError`].
 pub fn sized(design: &Design) -> Result<(Stage, Reading, Waveforms, Vec<String>), SizingError> {
-    let (stage, reading, notes) = settled(design)?;
+    let Sized {
+        stage,
+        reading,
+        notes,
+        ..
+    } = settled(design)?;
     let waveforms = stage.waveforms().map_err(SizingError::Stage)?;
     Ok((stage, reading, waveforms, notes))
 }
 
-fn settled(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError> {
-    let problem = Problem::of(design)?;
+fn settled(design: &Design) -> Result<Sized, SizingError> {
+    let chosen = width::resolve(design)?;
+    let design = &chosen.design;
+    let mut problem = Problem::of(design)?;
+    problem.notes.extend(chosen.note);
     let trial = |problem: &Problem| {
         let mut notes = problem.notes.clone();
         let mut stage = stack::size(problem, &mut notes)?;
@@ -335,9 +376,14 @@ fn settled(design: &Design) -> Result<(Stage, Reading, Vec<String>), SizingError
             .map(|probed| probed.drain_peak_v);
     }
     figures.junction_c = junction_c;
-    figures.gate_drive_w = drive(design)?;
+    figures.gate_drive_w = drive(design)?.map(|watt| watt * problem.sides());
     figures.power_added_efficiency = figures
         .gate_drive_w
         .map(|drive| (figures.output_power_w - drive) / figures.supply_power_w);
-    Ok((stage, reading, notes))
+    Ok(Sized {
+        stage,
+        reading,
+        notes,
+        width_m: chosen.width_m,
+    })
 }

@@ -263,6 +263,9 @@ impl Stage {
                 .map(|p| p.cross)
                 .filter(|c| c.value > 0.0)
                 .map(capacitor),
+            width_m: None,
+            stack: None,
+            gate_supplies_v: Vec::new(),
             trap_coil: self.trap.map(|t| coil(t.coil)),
             trap_capacitor: self.trap.map(|t| capacitor(t.capacitor)),
         }

@@ -5,7 +5,7 @@
 //! Electron. 53(5), 2006 (all values from memory of the cited papers, recomputed).
 
 use evenfall_engine::answer::{Answer, Solved};
-use evenfall_engine::design::{Capacitance, Design, Feed, Form, Mismatch, Upper};
+use evenfall_engine::design::{Capacitance, Design, Feed, Form, Mismatch, PerWidth, Upper};
 use evenfall_engine::exchange::link;
 use evenfall_engine::sizing;
 use evenfall_engine::solve;
@@ -281,4 +281,121 @@ fn what_cannot_be_is_refused_beside_its_field() {
         },
         "stage.gate_supplies_v",
     );
+}
+
+/// A switch on a chip: 0.8 ohm mm, 0.5 fF/um, 1 fF/um of gate (invented).
+fn chip() -> Design {
+    let mut design = link::base();
+    design.brief.carrier_hz = 433.92e6;
+    design.brief.power_w = Some(0.1);
+    design.brief.supply_v = Some(1.2);
+    design.device.gate_drive_v = Some(1.2);
+    design.device.node_f = 1e-10;
+    design.device.per_width = Some(PerWidth {
+        on_resistance_ohm_m: 8e-4,
+        output_f_per_m: 5e-10,
+        gate_f_per_m: 1e-9,
+        width_m: None,
+        choose_stack: false,
+    });
+    design.stage.loaded_q = 4.0;
+    design.stage.feed = Feed::Resonant { q: 1.2 };
+    design.stage.coil_q = Some(12.0);
+    design
+}
+
+fn lost_w(solved: &Solved) -> f64 {
+    let f = &solved.figures;
+    f.supply_power_w + f.gate_drive_w.expect("a drive") - f.output_power_w
+}
+
+#[test]
+fn the_width_of_least_loss() {
+    let best = solved(&chip());
+    let width_m = best.values.width_m.expect("a width");
+    for factor in [0.8, 0.9, 1.1, 1.25] {
+        let mut other = chip();
+        if let Some(per) = &mut other.device.per_width {
+            per.width_m = Some(factor * width_m);
+        }
+        let other = solved(&other);
+        assert!(
+            lost_w(&other) > lost_w(&best),
+            "{factor} of the width loses less"
+        );
+    }
+    assert!(
+        best.notes.iter().any(|n| n.contains("wide")),
+        "{:?}",
+        best.notes
+    );
+    // Without a drive to pay for, the device grows until it is the whole shunt.
+    let mut free = chip();
+    free.device.gate_drive_v = None;
+    let free = solved(&free);
+    assert!(free.values.width_m > Some(1.5 * width_m));
+}
+
+#[test]
+fn the_stack_is_chosen_under_the_limit_of_each_switch() {
+    let mut design = chip();
+    design.brief.supply_v = Some(2.5);
+    design.device.rating_v = Some(3.6);
+    if let Some(per) = &mut design.device.per_width {
+        per.choose_stack = true;
+    }
+    let got = solved(&design);
+    assert_eq!(got.values.stack, Some(3));
+    assert!(
+        got.detail
+            .stack
+            .iter()
+            .all(|s| s.drain_source_v < 0.8 * 3.6)
+    );
+    let refused = |per: PerWidth| {
+        let mut design = chip();
+        design.device.per_width = Some(per);
+        match solve(&design) {
+            Answer::Refused(r) => {
+                assert_eq!(r.field.as_deref(), Some("device.per_width"), "{}", r.reason)
+            }
+            Answer::Solved(_) => panic!("solved"),
+        }
+    };
+    let per = chip().device.per_width.expect("widths");
+    refused(PerWidth {
+        width_m: Some(0.0),
+        ..per
+    });
+    refused(PerWidth {
+        output_f_per_m: -1.0,
+        ..per
+    });
+}
+
+#[test]
+fn other_ways_to_meet_the_brief() {
+    let design = board();
+    let all = sizing::alternatives(&design);
+    assert_eq!(all.len(), sizing::ALTERNATIVES);
+    assert_eq!(all.iter().filter(|a| a.own).count(), 1);
+    let of = |name: &str| {
+        let found = all.iter().find(|a| a.name == name).expect("the way");
+        found.outcome.as_ref().expect("solved")
+    };
+    // Each is sized for the same power and switches softly.
+    for way in &all {
+        let figures = way.outcome.as_ref().expect("solved").figures;
+        near(way.name, figures.output_power_w, 60.0, 1e-6);
+        assert!(figures.turn_on_v.abs() < 0.01, "{}", way.name);
+        assert_eq!(
+            solve(&way.design),
+            Answer::Solved((**way.outcome.as_ref().expect("solved")).clone())
+        );
+    }
+    let own = of("choke feed");
+    assert_eq!(own.figures, solved(&design).figures);
+    assert!(of("trap at 2 f").figures.drain_peak_v < 0.8 * own.figures.drain_peak_v);
+    assert!(of("differential").harmonics_dbc[0] < -200.0);
+    assert!(of("resonant feed, X = 0").values.shunt.c_f > own.values.shunt.c_f);
 }

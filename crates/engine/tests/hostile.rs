@@ -3,7 +3,7 @@
 use evenfall_engine::answer::Answer;
 use evenfall_engine::design::{
     Aim, Capacitance, Capacitor, Coil, Design, Device, Diode, Feed, Fitted, Form, Limits, Load,
-    Mismatch, StageChoice, Upper,
+    Mismatch, PerWidth, StageChoice, Upper,
 };
 use evenfall_engine::exchange::{file, link};
 use evenfall_engine::{quantity, solve};
@@ -120,11 +120,25 @@ fn design(n: impl Strategy<Value = f64> + 'static) -> impl Strategy<Value = Desi
             prop::option::of((n.clone(), n.clone(), some.clone())),
             n.clone(),
             n.clone(),
+            prop::option::weighted(
+                0.3,
+                (n.clone(), n.clone(), n.clone(), some.clone(), any::<bool>()).prop_map(
+                    |(on_resistance_ohm_m, output_f_per_m, gate_f_per_m, width_m, choose_stack)| {
+                        PerWidth {
+                            on_resistance_ohm_m,
+                            output_f_per_m,
+                            gate_f_per_m,
+                            width_m,
+                            choose_stack,
+                        }
+                    },
+                ),
+            ),
         ),
     );
     let stage = (
         prop_oneof![4 => Just(Form::Single), 1 => Just(Form::Differential)],
-        prop_oneof![4 => Just(1u32), 2 => 0..6u32],
+        prop_oneof![4 => Just(1u32), 1 => 0..6u32],
         prop_oneof![3 => 0.2..0.8f64, 1 => n.clone()],
         n.clone(),
         feed,
@@ -133,7 +147,7 @@ fn design(n: impl Strategy<Value = f64> + 'static) -> impl Strategy<Value = Desi
         (
             prop_oneof![1 => Just([0.0; 5]), 1 => [-0.3..0.9f64, 0.0..1.0f64, -0.1..0.1f64, -0.1..0.1f64, -0.1..0.1f64].prop_map(|x| x), 1 => [n.clone(), n.clone(), n.clone(), n.clone(), n.clone()]],
             prop::option::weighted(0.3, prop_oneof![0.2..3.0f64, n.clone()]),
-            prop::option::weighted(0.2, prop::collection::vec(n.clone(), 0..4)),
+            prop::option::weighted(0.2, prop::collection::vec(n.clone(), 1..4)),
         ),
     );
     (".{0,12}", brief, device, stage, fitted).prop_map(|(name, b, d, s, fitted)| Design {
@@ -167,6 +181,7 @@ fn design(n: impl Strategy<Value = f64> + 'static) -> impl Strategy<Value = Desi
             }),
             threshold_v: d.5.1,
             node_f: d.5.2,
+            per_width: d.5.3,
         },
         stage: StageChoice {
             form: s.0,

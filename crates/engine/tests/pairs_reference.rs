@@ -45,7 +45,7 @@ fn amplitude(orbit: &dyn Orbit, parts: &[(Probe, f64)], order: usize) -> f64 {
         .zip(parts)
         .map(|(h, (_, s))| h[order] * *s)
         .sum();
-    2.0 * sum.norm()
+    2.0 * sum.norm_sqr().sqrt()
 }
 
 struct Checks {

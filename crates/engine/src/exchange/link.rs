@@ -201,7 +201,7 @@ fn scalar(path: &str, text: &str) -> Value {
         return Value::Null;
     }
     match serde_json::from_str::<Value>(text) {
-        Ok(number @ Value::Number(_)) => number,
+        Ok(plain @ (Value::Number(_) | Value::Bool(_))) => plain,
         _ => Value::String(text.to_owned()),
     }
 }
@@ -215,7 +215,7 @@ fn set(value: &mut Value, path: &str, leaf: Value) -> Option<()> {
             *value = Value::Array(Vec::new());
         }
         let list = value.as_array_mut()?;
-        if index >= 64 {
+        if index >= crate::charge::MOST_POINTS {
             return None;
         }
         while list.len() <= index {

@@ -1,6 +1,7 @@
 //! Newton's method on the conditions of soft switching and power.
 
-use super::problem::{Point, Problem, Way};
+use super::assembly::{Point, Way};
+use super::problem::Problem;
 use crate::stage::Stage;
 use nalgebra::{DMatrix, DVector};
 

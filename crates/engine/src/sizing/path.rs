@@ -5,8 +5,9 @@
 //! from the last. Where a leg cannot be finished, its end is the nearest that exists, and
 //! that leg is the reason.
 
+use super::assembly::{Point, Way};
 use super::newton::{Missed, Search, Unknown};
-use super::problem::{Point, Problem, Way};
+use super::problem::Problem;
 use super::{Ideal, SizingError, ideal};
 use crate::design::Feed;
 use crate::stage::Stage;

@@ -1,6 +1,7 @@
 //! Stacked switches: what stands above the lowest, and the gate supplies that share the voltage.
 
-use super::problem::{Problem, field, in_range, not_negative, positive};
+use super::checks::{field, in_range, not_negative, positive};
+use super::problem::Problem;
 use super::{SizingError, path};
 use crate::design::Design;
 use crate::stage::{Reading, Stage, Upper};

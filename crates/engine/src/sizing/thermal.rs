@@ -58,7 +58,8 @@ pub(super) fn settle<T>(
             upper.on_resistance_ohm *= thermal.factor(junction_c);
         }
         let answer = trial(&warm)?;
-        let rises_to = thermal.ambient_c + thermal.k_per_w * device_w(&losses(&answer));
+        let rises_to =
+            thermal.ambient_c + thermal.k_per_w * device_w(&losses(&answer)) / problem.sides();
         Ok::<_, SizingError>((answer, rises_to))
     };
     let (answer, first) = at(thermal.ambient_c)?;

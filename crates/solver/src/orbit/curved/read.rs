@@ -62,7 +62,7 @@ impl Solution {
     /// A quantity at the start and the nodes of a step.
     fn values(&self, piece: &Piece, probe: Probe) -> [f64; S + 1] {
         let row = self.row(piece, probe);
-        std::array::from_fn(|k| value(row, &piece.states.column(k)))
+        std::array::from_fn(|k| value(row, piece.states.column(k).iter()))
     }
 
     /// The state at `share` of a step.
@@ -102,7 +102,7 @@ impl Solution {
             }
             let ahead = next - slope * (next - at) / (slope - rate);
             (at, rate, next) = (next, slope, ahead.clamp(0.0, 1.0));
-            if !((next - at).abs() > CLOSE) {
+            if next.is_nan() || (next - at).abs() <= CLOSE {
                 break;
             }
         }
