@@ -4,7 +4,10 @@
 //! in, several choices out). Nothing here knows of class E.
 
 pub mod series;
+pub mod skin;
+pub mod solenoid;
 
+mod root;
 
 use crate::quantity;
 use std::f64::consts::PI;
