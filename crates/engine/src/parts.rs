@@ -6,6 +6,7 @@
 pub mod series;
 pub mod skin;
 pub mod solenoid;
+pub mod spiral;
 pub mod toroid;
 
 mod root;
