@@ -5,12 +5,13 @@
 //!
 //! Layers, each knowing only those above it:
 //! [`quantity`] → [`circuit`] → [`dynamics`] → [`orbit`] → [`design`] → [`stage`] →
-//! [`sizing`] → [`exchange`].
+//! [`sizing`] → [`exchange`]; [`parts`] stands beside them and knows [`quantity`] alone.
 #![forbid(unsafe_code)]
 
 pub mod answer;
 pub mod design;
 pub mod exchange;
+pub mod parts;
 pub mod quantity;
 pub mod sizing;
 pub mod stage;
