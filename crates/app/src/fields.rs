@@ -133,7 +133,7 @@ pub(crate) fn Field(
     let error_id = format!("{id}-problem");
     let described = error_id.clone();
     let slide = move |event: leptos::ev::Event, range: (f64, f64)| {
-        let at: f64 = event_target_value(&event).parse().unwrap_or(0.0);
+        let at: f64 = event_target_value(&event).parse().map_or(0.0, |at: u16| f64::from(at));
         let text = quantity::format(range.0 * libm::pow(range.1 / range.0, at / 1000.0), unit);
         if let Ok(number) = quantity::parse(&text, unit) {
             typing.forget();

@@ -85,7 +85,7 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             if let Some(v) = (trace.values)(w).get(within) {
                 text.push_str(&format!(
                     " · {} {}",
-                    trace.label.to_lowercase(),
+                    trace.label.to_ascii_lowercase(),
                     quantity::format(*v, trace.unit)
                 ));
             }
