@@ -1,19 +1,18 @@
 //! The page of Evenfall: installs the panic message and mounts the views.
-#![allow(
-    unreachable_pub,
-    reason = "the component macro makes its property types public"
-)]
-
 mod brief;
+mod designs;
+mod device;
 mod examples;
 mod fields;
 mod figures;
 mod fine;
 mod parts;
+mod pieces;
 mod schematic;
 mod scope;
 mod shelf;
 mod state;
+mod storage;
 mod studies;
 mod timing;
 
@@ -21,12 +20,11 @@ use leptos::prelude::*;
 
 fn main() {
     console_error_panic_hook::set_once();
-    mount_to_body(Page);
+    mount_to_body(page);
 }
 
 /// The whole page, from the brief down.
-#[component]
-fn Page() -> impl IntoView {
+fn page() -> AnyView {
     let app = state::App::open();
     state::keep_address(app);
     view! {
@@ -36,18 +34,18 @@ fn Page() -> impl IntoView {
         </header>
         <main>
             <section class="left" aria-label="Brief and elements">
-                <brief::Brief app/>
-                <parts::Parts app/>
+                {brief::brief(app)}
+                {parts::parts(app)}
             </section>
             <section class="right" aria-label="Answer">
-                <figures::Ledger app/>
-                <schematic::Schematic app/>
-                <scope::Scope app/>
-                <figures::Spectrum app/>
-                <figures::Watts app/>
-                <figures::Figures app/>
-                <studies::Studies app/>
-                <shelf::Shelf app/>
+                {figures::ledger(app)}
+                {schematic::schematic(app)}
+                {scope::scope(app)}
+                {figures::spectrum(app)}
+                {figures::watts(app)}
+                {figures::figures(app)}
+                {studies::studies(app)}
+                {designs::designs(app)}
             </section>
         </main>
         <footer>
@@ -56,4 +54,5 @@ fn Page() -> impl IntoView {
             </p>
         </footer>
     }
+    .into_any()
 }

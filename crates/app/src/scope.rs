@@ -2,6 +2,7 @@
 
 use crate::figures::tidy;
 use crate::fine::{FINER, Fine};
+use crate::pieces::{live, press, toggle};
 use crate::state::App;
 use evenfall_engine::answer::Waveforms;
 use evenfall_engine::quantity;
@@ -47,8 +48,7 @@ const TRACES: [Trace; 3] = [
 ];
 
 /// The scope with its three traces.
-#[component]
-pub(crate) fn Scope(app: App) -> impl IntoView {
+pub(crate) fn scope(app: App) -> AnyView {
     let periods = RwSignal::new(1usize);
     let cursor: RwSignal<Option<usize>> = RwSignal::new(None);
     let by_key = RwSignal::new(false);
@@ -135,31 +135,48 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             ));
         }
     };
+    let mode = live(move || if by_key.get() { "polite" } else { "off" }.to_owned());
+    let span = |count: usize, words: &'static str| {
+        let pressed = live(move || (periods.get() == count).to_string());
+        toggle(words, pressed, press(move || periods.set(count)))
+    };
+    let look = Look {
+        periods,
+        cursor,
+        resized,
+        printing,
+    };
+    let traces: Vec<AnyView> = TRACES.iter().map(|trace| view(app, trace, look)).collect();
     view! {
         <section class="card">
             <h2>"Waveforms"</h2>
-            <p class="buttons">
-                <button type="button" aria-pressed=move || (periods.get() == 1).to_string() on:click=move |_| periods.set(1)>"one period"</button>
-                <button type="button" aria-pressed=move || (periods.get() == 2).to_string() on:click=move |_| periods.set(2)>"two periods"</button>
-            </p>
+            <p class="buttons">{span(1, "one period")}{span(2, "two periods")}</p>
             <div class="traces" data-test="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
-                {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized printing/> }).collect_view()}
+                {traces}
             </div>
-            <p class="origin">{axis}</p>
-            <p class="readout" aria-live=move || if by_key.get() { "polite" } else { "off" } data-test="readout">{readout}</p>
+            <p class="origin">{live(axis)}</p>
+            <p class="readout" aria-live=mode data-test="readout">{live(readout)}</p>
         </section>
     }
+    .into_any()
 }
 
-#[component]
-fn TraceView(
-    app: App,
-    trace: &'static Trace,
+/// What the traces are looked at with.
+#[derive(Clone, Copy)]
+struct Look {
     periods: RwSignal<usize>,
     cursor: RwSignal<Option<usize>>,
     resized: RwSignal<u32>,
     printing: RwSignal<bool>,
-) -> impl IntoView {
+}
+
+fn view(app: App, trace: &'static Trace, look: Look) -> AnyView {
+    let Look {
+        periods,
+        cursor,
+        resized,
+        printing,
+    } = look;
     let canvas: NodeRef<Canvas> = NodeRef::new();
     Effect::new(move |_| {
         resized.track();
@@ -193,10 +210,11 @@ fn TraceView(
     };
     view! {
         <figure>
-            <figcaption><b>{trace.label}</b>" "<span>{range}</span></figcaption>
+            <figcaption><b>{trace.label}</b>" "<span>{live(range)}</span></figcaption>
             <canvas node_ref=canvas role="img" aria-label=format!("{} over time", trace.label)></canvas>
         </figure>
     }
+    .into_any()
 }
 
 /// What a trace is drawn for.

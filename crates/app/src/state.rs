@@ -71,9 +71,8 @@ impl App {
 
 fn from_address() -> (Design, Vec<String>) {
     let hash = window().location().hash().unwrap_or_default();
-    let start = || examples::all().remove(0).1;
     if hash.len() < 2 {
-        return (start(), Vec::new());
+        return (examples::first(), Vec::new());
     }
     let (design, mut problems) = link::read(&hash);
     if problems.is_empty() {
@@ -83,7 +82,7 @@ fn from_address() -> (Design, Vec<String>) {
         0,
         "The link could not be read whole, so the starting design is shown.".to_owned(),
     );
-    (start(), problems)
+    (examples::first(), problems)
 }
 
 /// Keeps the address's fragment at the design, and the design at a fragment edited by hand.
