@@ -8,6 +8,7 @@ mod figures;
 mod fine;
 mod parts;
 mod pieces;
+mod plot;
 mod schematic;
 mod scope;
 mod shelf;

@@ -1,6 +1,7 @@
 //! Ground state: one design. Everything else on the page is derived from it.
 
 use crate::examples;
+use crate::plot::Sight;
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::design::Design;
 use evenfall_engine::exchange::link;
@@ -22,6 +23,8 @@ pub(crate) struct App {
     pub(crate) shown: Memo<Arc<Design>>,
     /// Counts the designs opened: text half typed belongs to the one before.
     pub(crate) opened: RwSignal<u32>,
+    /// What the plots are seen on.
+    pub(crate) sight: Sight,
     /// What the person should be told outside any field.
     pub(crate) notices: RwSignal<Vec<String>>,
 }
@@ -50,6 +53,7 @@ impl App {
             last,
             shown,
             opened: RwSignal::new(0),
+            sight: Sight::new(),
             notices: RwSignal::new(notices),
         }
     }
