@@ -1,6 +1,5 @@
 //! The brief: a sentence whose values are fields, and the details beneath it.
 
-use crate::device;
 use crate::examples;
 use crate::fields::{Quantity, always, field, fields, maybe};
 use crate::pieces::{choice, line, list, one_of, when};
@@ -247,7 +246,6 @@ pub(crate) fn brief(app: App) -> AnyView {
             </div>
             <p class="starts">{aim_choice(app)}</p>
             {open_load}
-            {device::device(app)}
             <h3>"Limits"</h3>
             <div class="grid">{fields(app, &LIMITS)}</div>
         </section>

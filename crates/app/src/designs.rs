@@ -7,7 +7,7 @@ use evenfall_engine::exchange::file;
 use leptos::prelude::*;
 
 static DESIGNS: Kind = Kind {
-    tests: ["save", "undo", "shelf-message"],
+    tests: ["save", "undo", "design-back", "shelf-message"],
     save: "Save in this browser",
     prefix: "evenfall/1/design/",
     good: |text| file::read(text).is_ok(),

@@ -1,34 +1,20 @@
-//! The switch: its fields.
+//! The switch: its fields, its capacitance, and the devices that are kept.
 
+use crate::capacitance::capacitance;
+use crate::devices::devices;
 use crate::fields::{Quantity, always, fields, maybe};
 use crate::pieces::when;
 use crate::state::App;
-use evenfall_engine::design::{Capacitance, Diode};
+use evenfall_engine::design::Diode;
 use leptos::prelude::*;
 
-static SWITCH: [Quantity; 3] = [
+static SWITCH: [Quantity; 2] = [
     Quantity::needed(
         "on_resistance",
         "On-resistance",
         "Ω",
         always!(device.on_resistance_ohm),
     ),
-    Quantity::optional(
-        "capacitance",
-        "Output capacitance (constant)",
-        "F",
-        (
-            |d| match d.device.capacitance {
-                Capacitance::Constant { c_f } => Some(c_f),
-                _ => None,
-            },
-            |d, v| {
-                d.device.capacitance =
-                    v.map_or(Capacitance::None, |c_f| Capacitance::Constant { c_f });
-            },
-        ),
-    )
-    .hint("Of the switch itself; the shunt capacitor is sized beside it."),
     Quantity::optional(
         "diode_v",
         "Body diode, forward (empty: none)",
@@ -111,23 +97,29 @@ static HEAT: [Quantity; 5] = [
     ),
 ];
 
-/// The fields of the switch.
+/// The card of the switch: its fields, its capacitance, and the shelf of devices.
 pub(crate) fn device(app: App) -> AnyView {
     let slope = when(
         move || app.design.with(|d| d.device.diode.is_some()),
         move || fields(app, &SLOPE),
     );
+    let (capacitance, curve) = capacitance(app);
     view! {
-        <h3>"Switch"</h3>
-        <div class="grid">
-            {fields(app, &SWITCH)}
-            {slope}
-            {fields(app, &RATINGS)}
-        </div>
-        <details open>
-            <summary><h3>"Heat and drive"</h3></summary>
-            <div class="grid">{fields(app, &HEAT)}</div>
-        </details>
+        <section class="card">
+            <h2>"Switch"</h2>
+            <div class="grid">
+                {fields(app, &SWITCH)}
+                {slope}
+                {fields(app, &RATINGS)}
+                {capacitance}
+            </div>
+            {curve}
+            <details open>
+                <summary><h3>"Heat and drive"</h3></summary>
+                <div class="grid">{fields(app, &HEAT)}</div>
+            </details>
+            {devices(app)}
+        </section>
     }
     .into_any()
 }

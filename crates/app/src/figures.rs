@@ -1,6 +1,6 @@
 //! Verdicts, figures, spectrum, and where each watt goes.
 
-use crate::pieces::{cell, line, list, live, number, row};
+use crate::pieces::{button, cell, line, list, live, number, press, row, when};
 use crate::state::App;
 use evenfall_engine::answer::{Solved, Verdict};
 use evenfall_engine::quantity;
@@ -105,10 +105,22 @@ pub(crate) fn ledger(app: App) -> AnyView {
             s.notes.iter().map(|n| line("", n.clone())).collect()
         })
     });
+    let offer = when(
+        move || app.offer().is_some(),
+        move || {
+            let take = press(move || {
+                if let Some(feed) = app.offer() {
+                    app.design.update(|d| d.stage.feed = feed);
+                }
+            });
+            button("use-feed", "Use this feed coil", take)
+        },
+    );
     view! {
         <section class="card">
             <h2>"Verdict"</h2>
             <p class=class aria-live="polite" data-test="summary">{live(move || summary(app))}</p>
+            <p class="buttons">{offer}</p>
             <div class="scroll"><table class="ledger">
                 <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col" class="met-word">"Met"</th></tr></thead>
                 <tbody>{rows}</tbody>
@@ -231,16 +243,32 @@ fn figure_list(app: App, s: &Solved) -> Vec<Figure> {
     ]
 }
 
+/// How far the drain peak is from the one of a constant capacitance, where that is known.
+fn beside_constant(_: App, s: &Solved) -> String {
+    let peak = s.figures.drain_peak_v;
+    let Some(constant) = s.figures.constant_capacitance_peak_v else {
+        return String::new();
+    };
+    let rise = 100.0 * (peak / constant - 1.0);
+    let way = if rise < 0.0 { "below" } else { "above" };
+    let [peak, constant] = [peak, constant].map(|v| quantity::format(v, "V"));
+    let rise = rise.abs();
+    format!("{peak}, {rise:.1} % {way} the {constant} of a constant capacitance")
+}
+
 /// The figures of the solved stage.
 pub(crate) fn figures(app: App) -> AnyView {
     let rows = list(move || {
         of_last(app, figure_list)
             .into_iter()
             .filter_map(|(key, label, value, caution)| {
-                let cells = vec![
-                    cell("number", &format!("figure-{key}"), value?),
-                    cell("caution", "", caution.to_owned()),
-                ];
+                let last = if key == "drain_peak_v" {
+                    let beside = of_last(app, beside_constant);
+                    view! { <td class="caution">{caution}<span class="beside" data-test="beside-constant">{beside}</span></td> }.into_any()
+                } else {
+                    cell("caution", "", caution.to_owned())
+                };
+                let cells = vec![cell("number", &format!("figure-{key}"), value?), last];
                 Some(row("", None, label.to_owned(), cells))
             })
             .collect()

@@ -1,7 +1,9 @@
 //! The page of Evenfall: installs the panic message and mounts the views.
 mod brief;
+mod capacitance;
 mod designs;
 mod device;
+mod devices;
 mod examples;
 mod fields;
 mod figures;
@@ -9,6 +11,7 @@ mod fine;
 mod parts;
 mod pieces;
 mod plot;
+mod points;
 mod schematic;
 mod scope;
 mod shelf;
@@ -34,8 +37,9 @@ fn page() -> AnyView {
             <p>"Class-E power stages, sized with every loss in place."</p>
         </header>
         <main>
-            <section class="left" aria-label="Brief and elements">
+            <section class="left" aria-label="Brief, switch and elements">
                 {brief::brief(app)}
+                {device::device(app)}
                 {parts::parts(app)}
             </section>
             <section class="right" aria-label="Answer">

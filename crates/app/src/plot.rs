@@ -44,11 +44,6 @@ impl Sight {
         self.changes.track();
         !self.printing.get() && theme().is_some_and(|m| m.matches())
     }
-
-    /// Draws anew: for plots that have just come into view.
-    pub(crate) fn look_again(self) {
-        self.changes.update(|n| *n += 1);
-    }
 }
 
 fn theme() -> Option<web_sys::MediaQueryList> {
@@ -121,18 +116,36 @@ impl Plane {
             .ok()
     }
 
-    /// Words a little above a point: to its right, or ending at it.
-    pub(crate) fn words(&self, at: (f64, f64), words: &str, colour: RGBColor, ends: bool) {
+    /// Words at a point.
+    pub(crate) fn words(&self, at: (f64, f64), words: &str, colour: RGBColor, side: Side) {
         let (x, y) = self.area.map_coordinate(&at);
         let RGBColor(r, g, b) = colour;
+        let (align, right, down) = match side {
+            Side::Right => ("start", 8.0, -3.0),
+            Side::Above => ("end", 0.0, -5.0),
+            Side::Below => ("end", 0.0, 15.0),
+        };
         self.context
             .set_fill_style_str(&format!("rgb({r},{g},{b})"));
         self.context
             .set_font(&format!("{}px system-ui,sans-serif", 12.0 * self.scale));
-        self.context
-            .set_text_align(if ends { "end" } else { "start" });
-        let above = f64::from(y) - 5.0 * self.scale;
+        self.context.set_text_align(align);
+        let (x, y) = (
+            f64::from(x) + right * self.scale,
+            f64::from(y) + down * self.scale,
+        );
         // Words that cannot be drawn stand beneath the plot too.
-        let _ = self.context.fill_text(words, f64::from(x), above);
+        let _ = self.context.fill_text(words, x, y);
     }
+}
+
+/// Where words stand: to the right of their point, or ending at it above or below.
+#[derive(Clone, Copy)]
+pub(crate) enum Side {
+    /// To its right.
+    Right,
+    /// Above, ending there.
+    Above,
+    /// Below, ending there.
+    Below,
 }

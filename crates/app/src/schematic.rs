@@ -38,9 +38,10 @@ fn label(app: App, index: usize, x: i32, y: i32, name: &'static str) -> Vec<AnyV
 pub(crate) fn schematic(app: App) -> AnyView {
     let on = live(move || quantity::format(app.shown.with(|d| d.device.on_resistance_ohm), "Ω"));
     let output_capacitance = live(move || {
-        app.shown.with(|d| match d.device.capacitance {
-            Capacitance::Constant { c_f } => format!("with {}", quantity::format(c_f, "F")),
-            _ => String::new(),
+        app.shown.with(|d| match &d.device.capacitance {
+            Capacitance::None => String::new(),
+            Capacitance::Constant { c_f } => format!("with {}", quantity::format(*c_f, "F")),
+            _ => "with C(v)".to_owned(),
         })
     });
     let volt = |v: f64| quantity::format(v, "V");

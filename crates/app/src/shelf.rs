@@ -1,15 +1,15 @@
 //! What is saved by name in this browser: save, open, copy, rename, delete, undo. Designs and
 //! devices are kept alike.
 
-use crate::pieces::{button, line, list, live, named_button, press, when};
+use crate::pieces::{Press, button, line, list, live, named_button, press, when};
 use crate::state::App;
 use crate::storage::{Shelved, forget, load, store};
 use leptos::prelude::*;
 
 /// A kind of thing that is kept, and how it and its text become one another.
 pub(crate) struct Kind {
-    /// Test ids of saving, undoing and the message.
-    pub(crate) tests: [&'static str; 3],
+    /// Test ids of saving, undoing a deletion, going back, and the message.
+    pub(crate) tests: [&'static str; 4],
     /// Words on the button that saves.
     pub(crate) save: &'static str,
     /// What stands before the names in storage; the version is in it.
@@ -38,7 +38,10 @@ pub(crate) struct Shelf {
     shelved: RwSignal<Shelved>,
     /// What the person is told.
     pub(crate) message: RwSignal<String>,
+    /// The last one deleted.
     removed: RwSignal<Option<(String, String)>>,
+    /// What stood on the page before the last one was opened.
+    before: RwSignal<Option<String>>,
     /// What this tab last read from or wrote to storage: an entry that has changed since is
     /// somebody else's and is not replaced.
     known: StoredValue<Option<(String, String)>>,
@@ -53,6 +56,7 @@ impl Shelf {
             shelved: RwSignal::new(load(kind.prefix, kind.good)),
             message: RwSignal::new(String::new()),
             removed: RwSignal::new(None),
+            before: RwSignal::new(None),
             known: StoredValue::new(None),
         };
         let listener = window_event_listener(leptos::ev::storage, move |_| shelf.reload());
@@ -118,7 +122,14 @@ impl Shelf {
     fn open(self, name: &str, text: &str) {
         self.known
             .set_value(Some((name.to_owned(), text.to_owned())));
-        self.message.set(String::new());
+        self.take(name, text);
+    }
+
+    /// Puts a text on the page; the one that stood there can be had back.
+    fn take(self, name: &str, text: &str) {
+        let before = (self.kind.text)(self.app);
+        self.before.set(Some(before));
+        self.message.set(format!("\"{name}\" is on the page."));
         (self.kind.take)(self.app, text);
     }
 
@@ -164,6 +175,21 @@ impl Shelf {
         }
     }
 
+    fn go_back(self) {
+        if let Some(text) = self.before.get_untracked() {
+            self.before.set(None);
+            self.message.set("The one before is back.".to_owned());
+            (self.kind.take)(self.app, &text);
+        }
+    }
+
+    /// A line of what comes with the page: it can be taken, not changed.
+    pub(crate) fn sample(self, name: String, text: &'static str, detail: String) -> AnyView {
+        let own = name.clone();
+        let take = press(move || self.take(&own, text));
+        view! { <li>{opener(name, detail, take)}</li> }.into_any()
+    }
+
     fn entry(self, name: String, text: String) -> AnyView {
         let act = |what: &'static str, act: fn(Self, &str, &str)| {
             let (own, text) = (name.clone(), text.clone());
@@ -178,35 +204,37 @@ impl Shelf {
         let detail = (self.kind.detail)(&text);
         let (own, own_text) = (name.clone(), text);
         let open = press(move || self.open(&own, &own_text));
-        view! {
-            <li>
-                <button type="button" class="open" on:click=open><span>{name}</span><small>{detail}</small></button>
-                {buttons}
-            </li>
-        }
-        .into_any()
+        view! { <li>{opener(name, detail, open)}{buttons}</li> }.into_any()
     }
 
     /// The button that saves, and the way back from a deletion.
     pub(crate) fn buttons(self) -> AnyView {
-        let [save, undo, message] = self.kind.tests;
-        let back = when(
+        let [save, undo, back, message] = self.kind.tests;
+        let undelete = when(
             move || self.removed.get().is_some(),
             move || button(undo, "Undo delete", press(move || self.undo())),
+        );
+        let before = when(
+            move || self.before.get().is_some(),
+            move || {
+                let words = "Back to the one before";
+                button(back, words, press(move || self.go_back()))
+            },
         );
         let blocked = when(
             move || self.shelved.get().blocked,
             || {
-                view! { <p class="problem">"This browser blocks storage: designs live in the link alone."</p> }
+                view! { <p class="problem">"This browser blocks storage: what is on the page lives in its link alone."</p> }
                     .into_any()
             },
         );
         view! {
             <p class="buttons">
                 {button(save, self.kind.save, press(move || self.save()))}
-                {back}
+                {undelete}
+                {before}
             </p>
-            <p role="status" class="readout" data-test=message>{live(move || self.message.get())}</p>
+            <p role="status" class="origin" data-test=message>{live(move || self.message.get())}</p>
             {blocked}
         }
         .into_any()
@@ -242,4 +270,10 @@ impl Shelf {
         let entries = self.shelved.get().entries;
         entries.into_iter().map(|(_, text)| text).collect()
     }
+}
+
+/// The button that puts a kept thing on the page.
+fn opener(name: String, detail: String, open: Press) -> AnyView {
+    view! { <button type="button" class="open" on:click=open><span>{name}</span><small>{detail}</small></button> }
+        .into_any()
 }

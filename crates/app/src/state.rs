@@ -3,7 +3,7 @@
 use crate::examples;
 use crate::plot::Sight;
 use evenfall_engine::answer::{Answer, Solved};
-use evenfall_engine::design::Design;
+use evenfall_engine::design::{Design, Feed};
 use evenfall_engine::exchange::link;
 use evenfall_engine::quantity;
 use leptos::prelude::*;
@@ -68,6 +68,14 @@ impl App {
     pub(crate) fn refusal(&self) -> Option<String> {
         match &*self.answer.get() {
             Answer::Refused(refusal) => Some(refusal.reason.clone()),
+            Answer::Solved(_) => None,
+        }
+    }
+
+    /// A feed coil with which there would be a stage, where the design is refused for want of it.
+    pub(crate) fn offer(&self) -> Option<Feed> {
+        match &*self.answer.get() {
+            Answer::Refused(refusal) => refusal.offer,
             Answer::Solved(_) => None,
         }
     }
