@@ -1,233 +1,13 @@
 //! Verdicts, figures, spectrum, and where each watt goes.
 
+use crate::pieces::{button, cell, line, list, live, number, press, row, when};
 use crate::state::App;
+use evenfall_engine::answer::{Solved, Verdict};
 use evenfall_engine::quantity;
 use leptos::prelude::*;
 
 pub(crate) fn per_cent(share: f64) -> String {
     format!("{:.2} %", 100.0 * share)
-}
-
-/// Whether this stage may be built: each limit with value, bound and margin.
-#[component]
-pub(crate) fn Ledger(app: App) -> impl IntoView {
-    let summary = move || {
-        if let Some(reason) = app.refusal() {
-            let below = if app.last.get().is_some() {
-                " Shown below is the last stage that exists."
-            } else {
-                ""
-            };
-            return format!("No such stage: {reason}.{below}");
-        }
-        let failing: Vec<String> = app
-            .last
-            .get()
-            .map(|s| {
-                s.verdicts
-                    .iter()
-                    .filter(|v| !v.met)
-                    .map(|v| v.limit.clone())
-                    .collect()
-            })
-            .unwrap_or_default();
-        if failing.is_empty() {
-            "Every limit is met: this stage may be built.".to_owned()
-        } else {
-            format!("Not yet: {}.", failing.join(", "))
-        }
-    };
-    let good = move || {
-        app.refusal().is_none()
-            && app
-                .last
-                .get()
-                .is_some_and(|s| s.verdicts.iter().all(|v| v.met))
-    };
-    let rows = move || {
-        let verdicts = app
-            .last
-            .get()
-            .map(|s| s.verdicts.clone())
-            .unwrap_or_default();
-        verdicts
-            .into_iter()
-            .map(|v| {
-                let margin = match v.limit.as_str() {
-                    "junction temperature" => format!("{:+.1} K", v.bound - v.value),
-                    "efficiency" => format!("{:+.1} pt", 100.0 * (v.value - v.bound)),
-                    "harmonics" => format!("{:+.1} dB", v.bound - v.value),
-                    "output power" => format!("{:+.1} %", 100.0 * tidy(v.value / v.bound - 1.0, 1.0)),
-                    _ => format!("{:+.1} %", 100.0 * (1.0 - v.value / v.bound)),
-                };
-                // Rounding of the solver is shown as zero.
-                let show = |x: f64| if v.unit.is_empty() { per_cent(x) } else { quantity::format(x, v.unit) };
-                let test = format!("verdict-{}", v.limit.replace(' ', "_"));
-                view! {
-                    <tr class:unmet=!v.met data-test=test>
-                        <th scope="row"><span aria-hidden="true">{if v.met { "✓ " } else { "✗ " }}</span>{v.limit.clone()}</th>
-                        <td class="number">{show(tidy(v.value, v.bound.abs()))}</td>
-                        <td class="number">{show(v.bound)}</td>
-                        <td class="number">{margin}</td>
-                        <td class="met-word">{if v.met { "met" } else { "not met" }}</td>
-                    </tr>
-                    {v.help.clone().map(|help| view! { <tr class="help"><td colspan="5">{help}</td></tr> })}
-                }
-            })
-            .collect_view()
-    };
-    view! {
-        <section class="card">
-            <h2>"Verdict"</h2>
-            <p class="summary" class:good=good class:bad=move || !good() aria-live="polite" data-test="summary">{summary}</p>
-            <div class="scroll"><table class="ledger">
-                <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col" class="met-word">"Met"</th></tr></thead>
-                <tbody>{rows}</tbody>
-            </table></div>
-            <ul class="plain">
-                {move || app.last.get().map(|s| s.notes.clone()).unwrap_or_default().into_iter().map(|n| view! { <li>{n}</li> }).collect_view()}
-            </ul>
-        </section>
-    }
-}
-
-/// The figures of the solved stage.
-#[component]
-pub(crate) fn Figures(app: App) -> impl IntoView {
-    let rows = move || {
-        let Some(s) = app.last.get() else {
-            return Vec::new();
-        };
-        let f = s.figures;
-        let mut list = vec![
-            (
-                "output_power_w",
-                "Output power at the carrier",
-                quantity::format(f.output_power_w, "W"),
-                "RF burns; transmitting needs permission.",
-            ),
-            (
-                "total_output_power_w",
-                "Output power with harmonics",
-                quantity::format(f.total_output_power_w, "W"),
-                "",
-            ),
-            (
-                "supply_power_w",
-                "Supply power",
-                quantity::format(f.supply_power_w, "W"),
-                "",
-            ),
-            (
-                "supply_current_a",
-                "Supply current",
-                quantity::format(f.supply_current_a, "A"),
-                "",
-            ),
-            (
-                "drain_efficiency",
-                "Drain efficiency",
-                per_cent(f.drain_efficiency),
-                "",
-            ),
-            (
-                "drain_peak_v",
-                "Drain voltage, peak",
-                quantity::format(f.drain_peak_v, "V"),
-                "Several times the supply: do not touch, and mind stored charge.",
-            ),
-            (
-                "drain_least_v",
-                "Drain voltage, least",
-                quantity::format(tidy(f.drain_least_v, f.drain_peak_v), "V"),
-                "",
-            ),
-            (
-                "switch_peak_a",
-                "Switch current, peak",
-                quantity::format(f.switch_peak_a, "A"),
-                "",
-            ),
-            (
-                "switch_rms_a",
-                "Switch current, RMS",
-                quantity::format(f.switch_rms_a, "A"),
-                "",
-            ),
-            (
-                "turn_on_v",
-                "Drain voltage at turn-on",
-                quantity::format(tidy(f.turn_on_v, f.drain_peak_v), "V"),
-                "",
-            ),
-            (
-                "turn_on_slope_v_per_s",
-                "Slope of the drain voltage at turn-on",
-                quantity::format(
-                    tidy(
-                        f.turn_on_slope_v_per_s,
-                        f.drain_peak_v * app.shown.with(|d| d.brief.carrier_hz),
-                    ),
-                    "V/s",
-                ),
-                "",
-            ),
-            (
-                "diode_fraction",
-                "Body diode conducts",
-                per_cent(f.diode_fraction),
-                "",
-            ),
-            ("loaded_q", "Loaded Q", quantity::format(f.loaded_q, ""), ""),
-            (
-                "balance",
-                "Power not accounted for",
-                format!("{:.0e}", s.balance.abs()),
-                "The solve's own check, relative; above 1e-9 it is refused.",
-            ),
-        ];
-        let optional = [
-            (
-                "junction_c",
-                "Junction temperature",
-                f.junction_c.map(|t| quantity::format(t, "°C")),
-                "A hot package burns the finger too.",
-            ),
-            (
-                "gate_drive_w",
-                "Gate drive power",
-                f.gate_drive_w.map(|w| quantity::format(w, "W")),
-                "",
-            ),
-            (
-                "power_added_efficiency",
-                "Power-added efficiency",
-                f.power_added_efficiency.map(per_cent),
-                "",
-            ),
-        ];
-        list.extend(
-            optional
-                .into_iter()
-                .filter_map(|(key, label, value, caution)| Some((key, label, value?, caution))),
-        );
-        list
-    };
-    view! {
-        <section class="card">
-            <h2>"Figures"</h2>
-            <p class="origin">"From the exact periodic solution of the stage drawn above."</p>
-            <table class="figures"><tbody>
-                {move || rows().into_iter().map(|(key, label, value, caution)| view! {
-                    <tr>
-                        <th scope="row">{label}</th>
-                        <td class="number" data-test=format!("figure-{key}")>{value}</td>
-                        <td class="caution">{caution}</td>
-                    </tr>
-                }).collect_view()}
-            </tbody></table>
-        </section>
-    }
 }
 
 /// What is below a millionth of the scale is shown as zero: it is the solver's rounding.
@@ -239,31 +19,306 @@ pub(crate) fn tidy(value: f64, scale: f64) -> f64 {
     }
 }
 
-/// Harmonics of the load current, in dBc.
-#[component]
-pub(crate) fn Spectrum(app: App) -> impl IntoView {
-    const FLOOR: f64 = -80.0;
-    let bars = move || {
-        let harmonics = app
-            .last
-            .get()
-            .map(|s| s.harmonics_dbc.clone())
-            .unwrap_or_default();
-        harmonics
-            .into_iter()
-            .take(9)
-            .enumerate()
-            .map(|(k, dbc)| {
-                let x = 44 + 38 * (k + 1);
-                let height = 120.0 * (1.0 - dbc.max(FLOOR) / FLOOR);
-                view! {
-                    <rect class="bar" x=x y=150.0 - height width="22" height=height.max(0.5)/>
-                    <text class="tick" x=x + 11 y="166" text-anchor="middle">{k + 2}</text>
-                    <text class="tick" x=x + 11 y=144.0 - height text-anchor="middle">{format!("{dbc:.1}")}</text>
-                }
-            })
-            .collect_view()
+/// Something made of the last stage; nothing before there is one.
+fn of_last<T: Default>(app: App, make: fn(App, &Solved) -> T) -> T {
+    app.last
+        .get()
+        .map_or_else(T::default, |solved| make(app, &solved))
+}
+
+fn failing(solved: &Solved) -> Vec<String> {
+    let failing = solved.verdicts.iter().filter(|v| !v.met);
+    failing.map(|v| v.limit.clone()).collect()
+}
+
+fn summary(app: App) -> String {
+    if let Some(reason) = app.refusal() {
+        let below = if app.last.get().is_some() {
+            " Shown below is the last stage that exists."
+        } else {
+            ""
+        };
+        return format!("No such stage: {reason}.{below}");
+    }
+    let failing = of_last(app, |_, s| failing(s));
+    if failing.is_empty() {
+        "Every limit is met: this stage may be built.".to_owned()
+    } else {
+        format!("Not yet: {}.", failing.join(", "))
+    }
+}
+
+fn verdict_rows(v: &Verdict) -> Vec<AnyView> {
+    let percent = |share: f64| format!("{:+.1} %", 100.0 * share);
+    let margin = match v.limit.as_str() {
+        "junction temperature" => format!("{:+.1} K", v.bound - v.value),
+        "efficiency" => format!("{:+.1} pt", 100.0 * (v.value - v.bound)),
+        "harmonics" => format!("{:+.1} dB", v.bound - v.value),
+        "output power" => percent(tidy(v.value / v.bound - 1.0, 1.0)),
+        _ => percent(1.0 - v.value / v.bound),
     };
+    let show = |x: f64| {
+        if v.unit.is_empty() {
+            per_cent(x)
+        } else {
+            quantity::format(x, v.unit)
+        }
+    };
+    let (class, word) = if v.met {
+        ("", "met")
+    } else {
+        ("unmet", "not met")
+    };
+    let cells = vec![
+        // Rounding of the solver is shown as zero.
+        number(show(tidy(v.value, v.bound.abs()))),
+        number(show(v.bound)),
+        number(margin),
+        cell("met-word", "", word.to_owned()),
+    ];
+    let test = format!("verdict-{}", v.limit.replace(' ', "_"));
+    let mut rows = vec![row(class, Some(test), v.limit.clone(), cells)];
+    if let Some(help) = v.help.clone() {
+        rows.push(view! { <tr class="help"><td colspan="5">{help}</td></tr> }.into_any());
+    }
+    rows
+}
+
+/// Whether this stage may be built: each limit with value, bound and margin.
+pub(crate) fn ledger(app: App) -> AnyView {
+    let class = live(move || {
+        let good = app.refusal().is_none() && of_last(app, |_, s| failing(s)).is_empty();
+        if good && app.last.get().is_some() {
+            "summary good"
+        } else {
+            "summary bad"
+        }
+        .to_owned()
+    });
+    let rows = list(move || {
+        of_last(app, |_, s| {
+            s.verdicts.iter().flat_map(verdict_rows).collect()
+        })
+    });
+    let notes = list(move || {
+        of_last(app, |_, s| {
+            s.notes.iter().map(|n| line("", n.clone())).collect()
+        })
+    });
+    let offer = when(
+        move || app.offer().is_some(),
+        move || {
+            let take = press(move || {
+                if let Some(feed) = app.offer() {
+                    app.design.update(|d| d.stage.feed = feed);
+                }
+            });
+            button("use-feed", "Use this feed coil", take)
+        },
+    );
+    view! {
+        <section class="card">
+            <h2>"Verdict"</h2>
+            <p class=class aria-live="polite" data-test="summary">{live(move || summary(app))}</p>
+            <p class="buttons">{offer}</p>
+            <div class="scroll"><table class="ledger">
+                <thead><tr><th scope="col">"Limit"</th><th scope="col" class="number">"Value"</th><th scope="col" class="number">"Bound"</th><th scope="col" class="number">"Margin"</th><th scope="col" class="met-word">"Met"</th></tr></thead>
+                <tbody>{rows}</tbody>
+            </table></div>
+            <ul class="plain">{notes}</ul>
+        </section>
+    }
+    .into_any()
+}
+
+/// Name for the tests, label, value where there is one, and what to be careful of.
+type Figure = (&'static str, &'static str, Option<String>, &'static str);
+
+fn figure_list(app: App, s: &Solved) -> Vec<Figure> {
+    let f = s.figures;
+    let show = |value: f64, unit: &str| Some(quantity::format(value, unit));
+    let volt = |value: f64| show(tidy(value, f.drain_peak_v), "V");
+    let slope = tidy(
+        f.turn_on_slope_v_per_s,
+        f.drain_peak_v * app.shown.with(|d| d.brief.carrier_hz),
+    );
+    vec![
+        (
+            "output_power_w",
+            "Output power at the carrier",
+            show(f.output_power_w, "W"),
+            "RF burns; transmitting needs permission.",
+        ),
+        (
+            "total_output_power_w",
+            "Output power with harmonics",
+            show(f.total_output_power_w, "W"),
+            "",
+        ),
+        (
+            "supply_power_w",
+            "Supply power",
+            show(f.supply_power_w, "W"),
+            "",
+        ),
+        (
+            "supply_current_a",
+            "Supply current",
+            show(f.supply_current_a, "A"),
+            "",
+        ),
+        (
+            "drain_efficiency",
+            "Drain efficiency",
+            Some(per_cent(f.drain_efficiency)),
+            "",
+        ),
+        (
+            "drain_peak_v",
+            "Drain voltage, peak",
+            show(f.drain_peak_v, "V"),
+            "Several times the supply: do not touch, and mind stored charge.",
+        ),
+        (
+            "drain_least_v",
+            "Drain voltage, least",
+            volt(f.drain_least_v),
+            "",
+        ),
+        (
+            "switch_peak_a",
+            "Switch current, peak",
+            show(f.switch_peak_a, "A"),
+            "",
+        ),
+        (
+            "switch_rms_a",
+            "Switch current, RMS",
+            show(f.switch_rms_a, "A"),
+            "",
+        ),
+        (
+            "turn_on_v",
+            "Drain voltage at turn-on",
+            volt(f.turn_on_v),
+            "",
+        ),
+        (
+            "turn_on_slope_v_per_s",
+            "Slope of the drain voltage at turn-on",
+            show(slope, "V/s"),
+            "",
+        ),
+        (
+            "diode_fraction",
+            "Body diode conducts",
+            Some(per_cent(f.diode_fraction)),
+            "",
+        ),
+        ("loaded_q", "Loaded Q", show(f.loaded_q, ""), ""),
+        (
+            "balance",
+            "Power not accounted for",
+            Some(format!("{:.0e}", s.balance.abs())),
+            "The solve's own check, relative; above 1e-9 it is refused.",
+        ),
+        (
+            "junction_c",
+            "Junction temperature",
+            f.junction_c.and_then(|t| show(t, "°C")),
+            "A hot package burns the finger too.",
+        ),
+        (
+            "gate_drive_w",
+            "Gate drive power",
+            f.gate_drive_w.and_then(|w| show(w, "W")),
+            "",
+        ),
+        (
+            "power_added_efficiency",
+            "Power-added efficiency",
+            f.power_added_efficiency.map(per_cent),
+            "",
+        ),
+    ]
+}
+
+/// How far the drain peak is from the one of a constant capacitance, where that is known.
+fn beside_constant(_: App, s: &Solved) -> String {
+    let peak = s.figures.drain_peak_v;
+    let Some(constant) = s.figures.constant_capacitance_peak_v else {
+        return String::new();
+    };
+    let rise = 100.0 * (peak / constant - 1.0);
+    let way = if rise < 0.0 { "below" } else { "above" };
+    let [peak, constant] = [peak, constant].map(|v| quantity::format(v, "V"));
+    let rise = rise.abs();
+    format!("{peak}, {rise:.1} % {way} the {constant} of a constant capacitance")
+}
+
+/// The figures of the solved stage.
+pub(crate) fn figures(app: App) -> AnyView {
+    let rows = list(move || {
+        of_last(app, figure_list)
+            .into_iter()
+            .filter_map(|(key, label, value, caution)| {
+                let last = if key == "drain_peak_v" {
+                    let beside = of_last(app, beside_constant);
+                    view! { <td class="caution">{caution}<span class="beside" data-test="beside-constant">{beside}</span></td> }.into_any()
+                } else {
+                    cell("caution", "", caution.to_owned())
+                };
+                let cells = vec![cell("number", &format!("figure-{key}"), value?), last];
+                Some(row("", None, label.to_owned(), cells))
+            })
+            .collect()
+    });
+    view! {
+        <section class="card">
+            <h2>"Figures"</h2>
+            <p class="origin">"From the exact periodic solution of the stage drawn above."</p>
+            <table class="figures"><tbody>{rows}</tbody></table>
+        </section>
+    }
+    .into_any()
+}
+
+fn tick(x: f64, y: f64, text: String) -> AnyView {
+    let (x, y) = (x.to_string(), y.to_string());
+    view! { <text class="tick" x=x y=y text-anchor="middle">{text}</text> }.into_any()
+}
+
+fn harmonic_bars(_: App, s: &Solved) -> Vec<AnyView> {
+    const FLOOR: f64 = -80.0;
+    let mut bars = Vec::new();
+    for (k, dbc) in s.harmonics_dbc.iter().take(9).enumerate() {
+        let x = 44.0 + 38.0 * (k + 1) as f64;
+        let height = 120.0 * (1.0 - dbc.max(FLOOR) / FLOOR);
+        let (left, top) = (x.to_string(), (150.0 - height).to_string());
+        let tall = height.max(0.5).to_string();
+        bars.push(view! { <rect class="bar" x=left y=top width="22" height=tall/> }.into_any());
+        bars.push(tick(x + 11.0, 166.0, (k + 2).to_string()));
+        bars.push(tick(x + 11.0, 144.0 - height, format!("{dbc:.1}")));
+    }
+    bars
+}
+
+fn harmonic_rows(_: App, s: &Solved) -> Vec<AnyView> {
+    let pairs = s.harmonics_dbc.iter().zip(&s.drain_harmonics_v[2..]);
+    pairs
+        .enumerate()
+        .map(|(k, (dbc, volt))| {
+            let cells = vec![
+                number(format!("{dbc:.2} dBc")),
+                number(quantity::format(*volt, "V")),
+            ];
+            row("", None, (k + 2).to_string(), cells)
+        })
+        .collect()
+}
+
+/// Harmonics of the load current, in dBc.
+pub(crate) fn spectrum(app: App) -> AnyView {
     view! {
         <section class="card">
             <h2>"Spectrum of the load current"</h2>
@@ -272,79 +327,82 @@ pub(crate) fn Spectrum(app: App) -> impl IntoView {
                 <rect class="bar carrier" x="44" y="30" width="22" height="120"/>
                 <text class="tick" x="55" y="166" text-anchor="middle">"1"</text>
                 <text class="tick" x="55" y="24" text-anchor="middle">"0"</text>
-                {bars}
+                {list(move || of_last(app, harmonic_bars))}
             </svg>
             <p class="origin">"dBc by order of harmonic; the carrier is 0 dBc, the foot of the bars -80 dBc."</p>
             <details>
                 <summary>"Harmonics 2 to 20 as figures"</summary>
                 <table><thead><tr><th scope="col">"Order"</th><th scope="col" class="number">"Load current"</th><th scope="col" class="number">"Drain voltage"</th></tr></thead>
-                <tbody>{move || app.last.get().map(|s| {
-                    s.harmonics_dbc.iter().zip(&s.drain_harmonics_v[2..]).enumerate().map(|(k, (dbc, volt))| view! {
-                        <tr><th scope="row">{k + 2}</th><td class="number">{format!("{dbc:.2} dBc")}</td><td class="number">{quantity::format(*volt, "V")}</td></tr>
-                    }).collect_view()
-                })}</tbody></table>
+                <tbody>{list(move || of_last(app, harmonic_rows))}</tbody></table>
             </details>
         </section>
     }
+    .into_any()
+}
+
+fn watt_rows(_: App, s: &Solved) -> Vec<AnyView> {
+    let l = s.losses;
+    let f = s.figures;
+    let parts = [
+        ("load, carrier", f.output_power_w, "figure-share-carrier"),
+        (
+            "load, harmonics",
+            f.total_output_power_w - f.output_power_w,
+            "figure-share-harmonics",
+        ),
+        ("switch, conduction", l.switch_w, "figure-switch_w"),
+        ("turn-on discharge", l.turn_on_w, "figure-turn_on_w"),
+        (
+            "turn-off, falling current",
+            l.turn_off_w,
+            "figure-turn_off_w",
+        ),
+        ("body diode", l.diode_w, "figure-diode_w"),
+        ("feed coil", l.feed_coil_w, "figure-feed_coil_w"),
+        (
+            "shunt capacitor",
+            l.shunt_capacitor_w,
+            "figure-shunt_capacitor_w",
+        ),
+        ("series coil", l.series_coil_w, "figure-series_coil_w"),
+        (
+            "series capacitor",
+            l.series_capacitor_w,
+            "figure-series_capacitor_w",
+        ),
+    ]
+    .map(|(name, watts, test)| (name, tidy(watts, f.supply_power_w), test));
+    let share = |watts: f64| watts / f.supply_power_w;
+    let losses = parts[1..].iter().map(|p| share(p.1));
+    let largest = losses.fold(1e-9, f64::max);
+    let rows = parts.iter().enumerate().map(|(k, (name, watts, test))| {
+        let (class, whole) = if k == 0 {
+            ("bar carrier", 1.0)
+        } else {
+            ("bar", largest)
+        };
+        let width = (100.0 * share(*watts) / whole).clamp(0.0, 100.0).to_string();
+        let bar = view! {
+            <td class="barcell"><svg viewBox="0 0 100 8" preserveAspectRatio="none" aria-hidden="true"><rect class=class width=width height="8"/></svg></td>
+        };
+        let cells = vec![
+            cell("number", test, quantity::format(*watts, "W")),
+            number(per_cent(share(*watts))),
+            bar.into_any(),
+        ];
+        row("", None, (*name).to_owned(), cells)
+    });
+    rows.collect()
 }
 
 /// Where each watt of the supply goes.
-#[component]
-pub(crate) fn Watts(app: App) -> impl IntoView {
-    let parts = move || {
-        let Some(s) = app.last.get() else {
-            return Vec::new();
-        };
-        let l = s.losses;
-        let f = s.figures;
-        let mut list = vec![
-            ("load, carrier", f.output_power_w, "figure-share-carrier"),
-            (
-                "load, harmonics",
-                f.total_output_power_w - f.output_power_w,
-                "figure-share-harmonics",
-            ),
-            ("switch, conduction", l.switch_w, "figure-switch_w"),
-            ("turn-on discharge", l.turn_on_w, "figure-turn_on_w"),
-            ("body diode", l.diode_w, "figure-diode_w"),
-            ("feed coil", l.feed_coil_w, "figure-feed_coil_w"),
-            (
-                "shunt capacitor",
-                l.shunt_capacitor_w,
-                "figure-shunt_capacitor_w",
-            ),
-            ("series coil", l.series_coil_w, "figure-series_coil_w"),
-            (
-                "series capacitor",
-                l.series_capacitor_w,
-                "figure-series_capacitor_w",
-            ),
-        ];
-        for part in &mut list {
-            part.1 = tidy(part.1, f.supply_power_w);
-        }
-        list.into_iter()
-            .map(|(name, w, test)| (name, w, w / f.supply_power_w, test))
-            .collect()
-    };
-    let largest_loss = move || parts().iter().skip(1).map(|p| p.2).fold(1e-9, f64::max);
+pub(crate) fn watts(app: App) -> AnyView {
     view! {
         <section class="card">
             <h2>"Where each watt goes"</h2>
-            <table class="watts"><tbody>
-                {move || parts().into_iter().enumerate().map(|(k, (name, watts, share, test))| {
-                    let width = if k == 0 { 100.0 * share } else { 100.0 * share / largest_loss() };
-                    view! {
-                        <tr>
-                            <th scope="row">{name}</th>
-                            <td class="number" data-test=test>{quantity::format(watts, "W")}</td>
-                            <td class="number">{per_cent(share)}</td>
-                            <td class="barcell"><svg viewBox="0 0 100 8" preserveAspectRatio="none" aria-hidden="true"><rect class=if k == 0 { "bar carrier" } else { "bar" } width=width.clamp(0.0, 100.0) height="8"/></svg></td>
-                        </tr>
-                    }
-                }).collect_view()}
-            </tbody></table>
+            <table class="watts"><tbody>{list(move || of_last(app, watt_rows))}</tbody></table>
             <p class="origin">"The first bar is a share of the supply power; the others are drawn against the largest loss."</p>
         </section>
     }
+    .into_any()
 }

@@ -1,19 +1,22 @@
 //! The page of Evenfall: installs the panic message and mounts the views.
-#![allow(
-    unreachable_pub,
-    reason = "the component macro makes its property types public"
-)]
-
 mod brief;
+mod capacitance;
+mod designs;
+mod device;
+mod devices;
 mod examples;
 mod fields;
 mod figures;
 mod fine;
 mod parts;
+mod pieces;
+mod plot;
+mod points;
 mod schematic;
 mod scope;
 mod shelf;
 mod state;
+mod storage;
 mod studies;
 mod timing;
 
@@ -21,12 +24,11 @@ use leptos::prelude::*;
 
 fn main() {
     console_error_panic_hook::set_once();
-    mount_to_body(Page);
+    mount_to_body(page);
 }
 
 /// The whole page, from the brief down.
-#[component]
-fn Page() -> impl IntoView {
+fn page() -> AnyView {
     let app = state::App::open();
     state::keep_address(app);
     view! {
@@ -35,19 +37,20 @@ fn Page() -> impl IntoView {
             <p>"Class-E power stages, sized with every loss in place."</p>
         </header>
         <main>
-            <section class="left" aria-label="Brief and elements">
-                <brief::Brief app/>
-                <parts::Parts app/>
+            <section class="left" aria-label="Brief, switch and elements">
+                {brief::brief(app)}
+                {device::device(app)}
+                {parts::parts(app)}
             </section>
             <section class="right" aria-label="Answer">
-                <figures::Ledger app/>
-                <schematic::Schematic app/>
-                <scope::Scope app/>
-                <figures::Spectrum app/>
-                <figures::Watts app/>
-                <figures::Figures app/>
-                <studies::Studies app/>
-                <shelf::Shelf app/>
+                {figures::ledger(app)}
+                {schematic::schematic(app)}
+                {scope::scope(app)}
+                {figures::spectrum(app)}
+                {figures::watts(app)}
+                {figures::figures(app)}
+                {studies::studies(app)}
+                {designs::designs(app)}
             </section>
         </main>
         <footer>
@@ -56,4 +59,5 @@ fn Page() -> impl IntoView {
             </p>
         </footer>
     }
+    .into_any()
 }

@@ -1,6 +1,7 @@
 //! The stage's elements as a table: each is sized or pinned, and says which.
 
-use crate::fields::{Field, Typing, step};
+use crate::fields::{Getter, Input, Quantity, Setter, Typing, field, input};
+use crate::pieces::{button, live, named_button, press, when};
 use crate::state::App;
 use evenfall_engine::answer::Values;
 use evenfall_engine::design::{Capacitor, Coil, Design, Fitted, Load};
@@ -22,20 +23,16 @@ pub(crate) struct Element {
     /// Pins or frees it.
     pub(crate) pin: fn(&mut Fitted, Option<f64>),
     /// What else a pinned part may state.
-    more: More,
+    more: Quantity,
 }
 
-/// A second value of a pinned part, ohms.
-#[derive(Clone, Copy)]
-struct More {
-    name: &'static str,
-    label: &'static str,
-    get: fn(&Design) -> Option<f64>,
-    set: fn(&mut Design, Option<f64>),
+/// Series resistance of a pinned part.
+const fn esr(name: &'static str, access: (Getter, Setter)) -> Quantity {
+    Quantity::optional(name, "series resistance (empty: from its Q)", "Ω", access)
 }
 
 /// Every element, from the supply to the load.
-pub(crate) const ELEMENTS: [Element; 5] = [
+pub(crate) static ELEMENTS: [Element; 5] = [
     Element {
         key: "feed",
         label: "Feed coil L1",
@@ -48,16 +45,17 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.feed.and_then(|p| p.esr_ohm),
             })
         },
-        more: More {
-            name: "esr-feed",
-            label: "series resistance (empty: from its Q)",
-            get: |d| d.fitted.feed.and_then(|p| p.esr_ohm),
-            set: |d, v| {
-                if let Some(p) = &mut d.fitted.feed {
-                    p.esr_ohm = v;
-                }
-            },
-        },
+        more: esr(
+            "esr-feed",
+            (
+                |d| d.fitted.feed.and_then(|p| p.esr_ohm),
+                |d, v| {
+                    if let Some(p) = &mut d.fitted.feed {
+                        p.esr_ohm = v;
+                    }
+                },
+            ),
+        ),
     },
     Element {
         key: "shunt",
@@ -71,16 +69,17 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.shunt.and_then(|p| p.esr_ohm),
             })
         },
-        more: More {
-            name: "esr-shunt",
-            label: "series resistance (empty: from its Q)",
-            get: |d| d.fitted.shunt.and_then(|p| p.esr_ohm),
-            set: |d, v| {
-                if let Some(p) = &mut d.fitted.shunt {
-                    p.esr_ohm = v;
-                }
-            },
-        },
+        more: esr(
+            "esr-shunt",
+            (
+                |d| d.fitted.shunt.and_then(|p| p.esr_ohm),
+                |d, v| {
+                    if let Some(p) = &mut d.fitted.shunt {
+                        p.esr_ohm = v;
+                    }
+                },
+            ),
+        ),
     },
     Element {
         key: "series_coil",
@@ -94,16 +93,17 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.series_coil.and_then(|p| p.esr_ohm),
             })
         },
-        more: More {
-            name: "esr-series_coil",
-            label: "series resistance (empty: from its Q)",
-            get: |d| d.fitted.series_coil.and_then(|p| p.esr_ohm),
-            set: |d, v| {
-                if let Some(p) = &mut d.fitted.series_coil {
-                    p.esr_ohm = v;
-                }
-            },
-        },
+        more: esr(
+            "esr-series_coil",
+            (
+                |d| d.fitted.series_coil.and_then(|p| p.esr_ohm),
+                |d, v| {
+                    if let Some(p) = &mut d.fitted.series_coil {
+                        p.esr_ohm = v;
+                    }
+                },
+            ),
+        ),
     },
     Element {
         key: "series_capacitor",
@@ -117,16 +117,17 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 esr_ohm: f.series_capacitor.and_then(|p| p.esr_ohm),
             });
         },
-        more: More {
-            name: "esr-series_capacitor",
-            label: "series resistance (empty: from its Q)",
-            get: |d| d.fitted.series_capacitor.and_then(|p| p.esr_ohm),
-            set: |d, v| {
-                if let Some(p) = &mut d.fitted.series_capacitor {
-                    p.esr_ohm = v;
-                }
-            },
-        },
+        more: esr(
+            "esr-series_capacitor",
+            (
+                |d| d.fitted.series_capacitor.and_then(|p| p.esr_ohm),
+                |d, v| {
+                    if let Some(p) = &mut d.fitted.series_capacitor {
+                        p.esr_ohm = v;
+                    }
+                },
+            ),
+        ),
     },
     Element {
         key: "drain_load",
@@ -140,104 +141,99 @@ pub(crate) const ELEMENTS: [Element; 5] = [
                 x_ohm: f.drain_load.map_or(0.0, |p| p.x_ohm),
             })
         },
-        more: More {
-            name: "load-reactance",
-            label: "series reactance",
-            get: |d| d.fitted.drain_load.map(|p| p.x_ohm),
-            set: |d, v| {
-                if let Some(p) = &mut d.fitted.drain_load {
-                    p.x_ohm = v.unwrap_or(0.0);
-                }
-            },
-        },
+        more: Quantity::optional(
+            "load-reactance",
+            "series reactance",
+            "Ω",
+            (
+                |d| d.fitted.drain_load.map(|p| p.x_ohm),
+                |d, v| {
+                    if let Some(p) = &mut d.fitted.drain_load {
+                        p.x_ohm = v.unwrap_or(0.0);
+                    }
+                },
+            ),
+        ),
     },
 ];
 
 /// The table of elements.
-#[component]
-pub(crate) fn Parts(app: App) -> impl IntoView {
-    let hold = move |_| {
+pub(crate) fn parts(app: App) -> AnyView {
+    let hold = press(move || {
         if let Some(solved) = app.last.get_untracked() {
             app.design.update(|d| {
-                for element in ELEMENTS {
+                for element in &ELEMENTS {
                     (element.pin)(&mut d.fitted, Some((element.value)(&solved.values)));
                 }
             });
         }
-    };
-    let free = move |_| {
+    });
+    let free = press(move || {
         let mut design = app.design.get_untracked();
         design.fitted = Fitted::default();
         app.replace(design);
-    };
-    let as_built = move || app.design.with(|d| d.fitted.is_complete());
+    });
+    let mode = live(move || {
+        if app.design.with(|d| d.fitted.is_complete()) {
+            "Every element is pinned: this is the stage as built, nothing is sized."
+        } else {
+            "Elements marked sized follow the brief; type a value to pin one."
+        }
+        .to_owned()
+    });
+    let rows: Vec<AnyView> = ELEMENTS.iter().map(|element| row(app, element)).collect();
     view! {
         <section class="card">
             <h2>"Elements"</h2>
-            <p class="mode" data-test="mode">
-                {move || if as_built() {
-                    "Every element is pinned: this is the stage as built, nothing is sized."
-                } else {
-                    "Elements marked sized follow the brief; type a value to pin one."
-                }}
-            </p>
+            <p class="mode" data-test="mode">{mode}</p>
             <table class="elements">
                 <thead><tr><th scope="col">"Element"</th><th scope="col">"Value"</th><th scope="col">"State"</th></tr></thead>
-                <tbody>{ELEMENTS.into_iter().map(|element| view! { <Row app element/> }).collect_view()}</tbody>
+                <tbody>{rows}</tbody>
             </table>
             <p class="buttons">
-                <button type="button" data-test="hold-all" on:click=hold>"Pin all as they are"</button>
-                <button type="button" data-test="free-all" on:click=free>"Free all"</button>
+                {button("hold-all", "Pin all as they are", hold)}
+                {button("free-all", "Free all", free)}
             </p>
         </section>
     }
+    .into_any()
 }
 
-#[component]
-fn Row(app: App, element: Element) -> impl IntoView {
+fn row(app: App, element: &'static Element) -> AnyView {
     let typing = Typing::new(app);
     let pinned = Memo::new(move |_| app.design.with(element.pinned));
-    let sized = Memo::new(move |_| app.last.get().map(|s| (element.value)(&s.values)));
-    let value = move || pinned.get().or(sized.get());
+    let value = Memo::new(move |_| {
+        let sized = app.last.get().map(|s| (element.value)(&s.values));
+        pinned.get().or(sized)
+    });
     let set = move |value: Option<f64>| app.design.update(|d| (element.pin)(&mut d.fitted, value));
-    let input = move |text: String| {
-        if let Some(value) = typing.read(text, element.unit, true) {
-            set(Some(value));
-        }
-    };
-    let key = move |event: leptos::ev::KeyboardEvent| {
-        let old = pinned.get_untracked().or(sized.get_untracked());
-        if let Some(next) = old.and_then(|old| step(&event, old, element.unit)) {
+    let is_pinned = move || pinned.get().is_some();
+    let free = move || {
+        let act = press(move || {
             typing.forget();
-            set(Some(next));
-        }
+            set(None);
+        });
+        let name = format!("Free {}", element.label);
+        named_button(&format!("free-{}", element.key), "free", Some(name), act)
     };
     let id = format!("pin-{}", element.key);
-    let error_id = format!("{id}-problem");
+    let own = Input {
+        id: id.clone(),
+        unit: element.unit,
+        optional: true,
+        value,
+        put: Box::new(set),
+    };
+    let state = live(move || if is_pinned() { "pinned " } else { "sized " }.to_owned());
     view! {
-        <tr class:pinned=move || pinned.get().is_some()>
-            <th scope="row"><label for=id.clone()>{element.label}</label></th>
+        <tr class:pinned=live(is_pinned)>
+            <th scope="row"><label for=id>{element.label}</label></th>
             <td>
-                <input id=id.clone() data-test=id type="text" autocomplete="off" spellcheck="false" prop:value=move || typing.shown(value(), element.unit)
-                    aria-invalid=move || typing.problem.get().is_some().to_string()
-                    aria-describedby=error_id.clone()
-                    on:input:target=move |e| input(e.target().value())
-                    on:keydown=key
-                    on:blur=move |_| if typing.leave() { set(None) }/>
-                <span class="problem" id=error_id role="status">{move || typing.problem.get()}</span>
-                <Show when=move || pinned.get().is_some()>
-                    <Field app name=element.more.name label=element.more.label unit="Ω" get=element.more.get set=element.more.set optional=true/>
-                </Show>
+                {input(typing, own)}
+                {when(is_pinned, move || field(app, element.more))}
             </td>
-            <td>
-                {move || if pinned.get().is_some() { "pinned" } else { "sized" }}
-                " "
-                <Show when=move || pinned.get().is_some()>
-                    <button type="button" data-test=format!("free-{}", element.key)
-                        aria-label=format!("Free {}", element.label)
-                        on:click=move |_| { typing.forget(); set(None); }>"free"</button>
-                </Show>
-            </td>
+            <td>{state}{when(is_pinned, free)}</td>
         </tr>
     }
+    .into_any()
 }

@@ -1,15 +1,15 @@
 //! The waveforms on one time axis, with a readout under the pointer and from the keyboard.
 
 use crate::figures::tidy;
-use crate::fine::{FINER, Fine};
+use crate::pieces::{live, press, toggle};
+use crate::plot::{Plane, ink};
 use crate::state::App;
 use evenfall_engine::answer::Waveforms;
 use evenfall_engine::quantity;
 use leptos::html::Canvas;
 use leptos::prelude::*;
-use plotters::prelude::*;
+use plotters::style::{Color, RGBColor};
 use wasm_bindgen::JsCast;
-use wasm_bindgen::closure::Closure;
 
 const HEIGHT: f64 = 132.0;
 
@@ -47,28 +47,10 @@ const TRACES: [Trace; 3] = [
 ];
 
 /// The scope with its three traces.
-#[component]
-pub(crate) fn Scope(app: App) -> impl IntoView {
+pub(crate) fn scope(app: App) -> AnyView {
     let periods = RwSignal::new(1usize);
     let cursor: RwSignal<Option<usize>> = RwSignal::new(None);
     let by_key = RwSignal::new(false);
-    let resized = RwSignal::new(0u32);
-    let listener = window_event_listener(leptos::ev::resize, move |_| resized.update(|n| *n += 1));
-    // Paper is light whatever the screen is; a change of theme redraws too.
-    let printing = RwSignal::new(false);
-    let before = window_event_listener(leptos::ev::beforeprint, move |_| printing.set(true));
-    let after = window_event_listener(leptos::ev::afterprint, move |_| printing.set(false));
-    if let Ok(Some(theme)) = window().match_media("(prefers-color-scheme: dark)") {
-        let redraw = Closure::<dyn FnMut()>::new(move || resized.update(|n| *n += 1));
-        theme.set_onchange(Some(redraw.as_ref().unchecked_ref()));
-        // It lives as long as the page does.
-        redraw.forget();
-    }
-    on_cleanup(move || {
-        listener.remove();
-        before.remove();
-        after.remove();
-    });
     let readout = move || {
         let Some(s) = app.last.get() else {
             return String::new();
@@ -85,7 +67,7 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             if let Some(v) = (trace.values)(w).get(within) {
                 text.push_str(&format!(
                     " · {} {}",
-                    trace.label.to_lowercase(),
+                    trace.label.to_ascii_lowercase(),
                     quantity::format(*v, trace.unit)
                 ));
             }
@@ -135,34 +117,38 @@ pub(crate) fn Scope(app: App) -> impl IntoView {
             ));
         }
     };
+    let mode = live(move || if by_key.get() { "polite" } else { "off" }.to_owned());
+    let span = |count: usize, words: &'static str| {
+        let pressed = live(move || (periods.get() == count).to_string());
+        toggle(words, pressed, press(move || periods.set(count)))
+    };
+    let look = Look { periods, cursor };
+    let traces: Vec<AnyView> = TRACES.iter().map(|trace| view(app, trace, look)).collect();
     view! {
         <section class="card">
             <h2>"Waveforms"</h2>
-            <p class="buttons">
-                <button type="button" aria-pressed=move || (periods.get() == 1).to_string() on:click=move |_| periods.set(1)>"one period"</button>
-                <button type="button" aria-pressed=move || (periods.get() == 2).to_string() on:click=move |_| periods.set(2)>"two periods"</button>
-            </p>
+            <p class="buttons">{span(1, "one period")}{span(2, "two periods")}</p>
             <div class="traces" data-test="traces" tabindex="0" role="group" aria-label="Waveforms; left and right keys move the readout" on:keydown=key on:pointermove=point on:pointerleave=move |_| cursor.set(None)>
-                {TRACES.iter().map(|trace| view! { <TraceView app trace periods cursor resized printing/> }).collect_view()}
+                {traces}
             </div>
-            <p class="origin">{axis}</p>
-            <p class="readout" aria-live=move || if by_key.get() { "polite" } else { "off" } data-test="readout">{readout}</p>
+            <p class="origin">{live(axis)}</p>
+            <p class="readout" aria-live=mode data-test="readout">{live(readout)}</p>
         </section>
     }
+    .into_any()
 }
 
-#[component]
-fn TraceView(
-    app: App,
-    trace: &'static Trace,
+/// What the traces are looked at with.
+#[derive(Clone, Copy)]
+struct Look {
     periods: RwSignal<usize>,
     cursor: RwSignal<Option<usize>>,
-    resized: RwSignal<u32>,
-    printing: RwSignal<bool>,
-) -> impl IntoView {
+}
+
+fn view(app: App, trace: &'static Trace, look: Look) -> AnyView {
+    let Look { periods, cursor } = look;
     let canvas: NodeRef<Canvas> = NodeRef::new();
     Effect::new(move |_| {
-        resized.track();
         let (Some(canvas), Some(solved)) = (canvas.get(), app.last.get()) else {
             return;
         };
@@ -171,7 +157,7 @@ fn TraceView(
             periods: periods.get(),
             cursor: cursor.get(),
             duty: app.shown.with(|d| d.stage.duty),
-            dark: !printing.get() && screen_is_dark(),
+            dark: app.sight.is_dark(),
         };
         let _ = draw(&canvas, trace, &solved.waveforms, moment);
     });
@@ -193,10 +179,11 @@ fn TraceView(
     };
     view! {
         <figure>
-            <figcaption><b>{trace.label}</b>" "<span>{range}</span></figcaption>
+            <figcaption><b>{trace.label}</b>" "<span>{live(range)}</span></figcaption>
             <canvas node_ref=canvas role="img" aria-label=format!("{} over time", trace.label)></canvas>
         </figure>
     }
+    .into_any()
 }
 
 /// What a trace is drawn for.
@@ -207,64 +194,37 @@ struct Moment {
     dark: bool,
 }
 
-fn screen_is_dark() -> bool {
-    window()
-        .match_media("(prefers-color-scheme: dark)")
-        .ok()
-        .flatten()
-        .is_some_and(|m| m.matches())
-}
-
 fn draw(
     canvas: &web_sys::HtmlCanvasElement,
     trace: &Trace,
     waveforms: &Waveforms,
     moment: Moment,
 ) -> Option<()> {
-    let ratio = window().device_pixel_ratio().max(1.0);
-    let width = f64::from(canvas.client_width()).max(120.0);
-    canvas.set_width((width * ratio) as u32);
-    canvas.set_height((HEIGHT * ratio) as u32);
-    let fine = ratio * FINER;
     let Moment {
         periods,
         cursor,
         duty,
         dark,
     } = moment;
-    let (ink, colour) = if dark {
-        (RGBColor(150, 160, 164), trace.dark)
-    } else {
-        (RGBColor(120, 116, 106), trace.light)
-    };
+    let colour = if dark { trace.dark } else { trace.light };
+    let ink = ink(dark);
     let values = (trace.values)(waveforms);
-    let count = values.len().saturating_sub(1);
-    if count == 0 {
-        return None;
-    }
+    let count = values.len().checked_sub(1).filter(|c| *c > 0)?;
     let least = values.iter().copied().fold(0.0, f64::min);
     let most = values.iter().copied().fold(0.0, f64::max);
     let span = (most - least).max(1e-12);
-    let area = Fine::on(canvas)?.into_drawing_area();
     let end = (periods * count) as f64;
-    let mut chart = ChartBuilder::on(&area)
-        .margin((4.0 * fine) as i32)
-        .build_cartesian_2d(0.0..end, (least - 0.06 * span)..(most + 0.06 * span))
-        .ok()?;
-    let line = |points: Vec<(f64, f64)>, style: ShapeStyle| LineSeries::new(points, style);
-    chart
-        .draw_series(line(
-            vec![(0.0, 0.0), (end, 0.0)],
-            ink.stroke_width(fine as u32),
-        ))
-        .ok()?;
-    let faint = ink.mix(0.45).stroke_width(fine as u32);
+    let plane = Plane::on(
+        canvas,
+        HEIGHT,
+        (0.0, end),
+        (least - 0.06 * span, most + 0.06 * span),
+    )?;
+    plane.line(vec![(0.0, 0.0), (end, 0.0)], ink.mix(1.0), 1.0)?;
     for period in 0..periods {
         for instant in [period as f64, period as f64 + duty] {
             let x = instant * count as f64;
-            chart
-                .draw_series(line(vec![(x, least), (x, most)], faint))
-                .ok()?;
+            plane.line(vec![(x, least), (x, most)], ink.mix(0.45), 1.0)?;
         }
     }
     let points = (0..=periods * count).map(|k| {
@@ -275,22 +235,11 @@ fn draw(
         };
         (k as f64, values[within])
     });
-    chart
-        .draw_series(line(
-            points.collect(),
-            colour.stroke_width((1.8 * fine) as u32),
-        ))
-        .ok()?;
+    plane.line(points.collect(), colour.mix(1.0), 1.8)?;
     if let Some(k) = cursor {
         let x = k as f64;
-        chart
-            .draw_series(line(
-                vec![(x, least), (x, most)],
-                ink.stroke_width(fine as u32),
-            ))
-            .ok()?;
-        let dot = Circle::new((x, values[k % count]), (3.5 * fine) as i32, colour.filled());
-        chart.draw_series(std::iter::once(dot)).ok()?;
+        plane.line(vec![(x, least), (x, most)], ink.mix(1.0), 1.0)?;
+        plane.dot((x, values[k % count]), colour)?;
     }
-    area.present().ok()
+    Some(())
 }

@@ -1,236 +1,279 @@
-//! Designs saved by name in local storage, and the design as a file.
-//!
-//! One entry a design. An entry that cannot be read is reported and left as it is.
+//! What is saved by name in this browser: save, open, copy, rename, delete, undo. Designs and
+//! devices are kept alike.
 
+use crate::pieces::{Press, button, line, list, live, named_button, press, when};
 use crate::state::App;
-use evenfall_engine::design::Design;
-use evenfall_engine::exchange::file;
-use gloo_storage::{LocalStorage, Storage};
+use crate::storage::{Shelved, forget, load, store};
 use leptos::prelude::*;
 
-const PREFIX: &str = "evenfall/1/design/";
-
-/// What the storage holds: names that can be read, and names that cannot.
-#[derive(Clone, Default, PartialEq)]
-struct Shelved {
-    designs: Vec<(String, Design)>,
-    damaged: Vec<String>,
-    blocked: bool,
+/// A kind of thing that is kept, and how it and its text become one another.
+pub(crate) struct Kind {
+    /// Test ids of saving, undoing a deletion, going back, and the message.
+    pub(crate) tests: [&'static str; 4],
+    /// Words on the button that saves.
+    pub(crate) save: &'static str,
+    /// What stands before the names in storage; the version is in it.
+    pub(crate) prefix: &'static str,
+    /// Whether a text can be read.
+    pub(crate) good: fn(&str) -> bool,
+    /// The name of the one on the page.
+    pub(crate) name: fn(App) -> String,
+    /// Gives the one on the page a name.
+    pub(crate) set_name: fn(App, &str),
+    /// The text of the one on the page.
+    pub(crate) text: fn(App) -> String,
+    /// A text with another name in it.
+    pub(crate) renamed: fn(&str, &str) -> String,
+    /// Puts a text on the page.
+    pub(crate) take: fn(App, &str),
+    /// What a line of the list says beside the name.
+    pub(crate) detail: fn(&str) -> String,
 }
 
-/// gloo's storage panics where storage is blocked, so its presence is asked first.
-fn available() -> bool {
-    window().local_storage().ok().flatten().is_some()
+/// A shelf as the page holds it.
+#[derive(Clone, Copy)]
+pub(crate) struct Shelf {
+    app: App,
+    kind: &'static Kind,
+    shelved: RwSignal<Shelved>,
+    /// What the person is told.
+    pub(crate) message: RwSignal<String>,
+    /// The last one deleted.
+    removed: RwSignal<Option<(String, String)>>,
+    /// What stood on the page before the last one was opened.
+    before: RwSignal<Option<String>>,
+    /// What this tab last read from or wrote to storage: an entry that has changed since is
+    /// somebody else's and is not replaced.
+    known: StoredValue<Option<(String, String)>>,
 }
 
-fn load() -> Shelved {
-    let Some(storage) = window().local_storage().ok().flatten() else {
-        return Shelved {
-            blocked: true,
-            ..Shelved::default()
+impl Shelf {
+    /// The shelf of a kind, read from storage and kept at what other tabs write.
+    pub(crate) fn new(app: App, kind: &'static Kind) -> Self {
+        let shelf = Self {
+            app,
+            kind,
+            shelved: RwSignal::new(load(kind.prefix, kind.good)),
+            message: RwSignal::new(String::new()),
+            removed: RwSignal::new(None),
+            before: RwSignal::new(None),
+            known: StoredValue::new(None),
         };
-    };
-    let mut shelved = Shelved::default();
-    for index in 0..storage.length().unwrap_or(0) {
-        let Some(key) = storage.key(index).ok().flatten() else {
-            continue;
-        };
-        let Some(name) = key.strip_prefix(PREFIX) else {
-            continue;
-        };
-        match LocalStorage::get::<String>(&key)
-            .ok()
-            .and_then(|text| file::read(&text).ok())
-        {
-            // Placed in the order of names; the standard library's sort is 6 kB to send.
-            Some(design) => {
-                let at = shelved
-                    .designs
-                    .partition_point(|(other, _)| other.as_str() < name);
-                shelved.designs.insert(at, (name.to_owned(), design));
-            }
-            None => {
-                let at = shelved
-                    .damaged
-                    .partition_point(|other| other.as_str() < name);
-                shelved.damaged.insert(at, name.to_owned());
-            }
-        }
+        let listener = window_event_listener(leptos::ev::storage, move |_| shelf.reload());
+        on_cleanup(move || listener.remove());
+        shelf
     }
-    shelved
-}
 
-fn store(name: &str, design: &Design) -> Result<(), String> {
-    if !available() {
-        return Err(
-            "This browser does not let the page store anything; copy the link instead.".to_owned(),
-        );
+    fn reload(self) {
+        self.shelved.set(load(self.kind.prefix, self.kind.good));
     }
-    LocalStorage::set(format!("{PREFIX}{name}"), file::write(design)).map_err(|_| {
-        format!("\"{name}\" could not be saved: the storage is full. Delete a design or copy the link instead.")
-    })
-}
 
-/// Deletes an entry; nothing where storage is gone.
-fn forget(name: &str) {
-    if available() {
-        LocalStorage::delete(format!("{PREFIX}{name}"));
+    fn report(self, outcome: Result<(), String>, done: String) {
+        self.message.set(outcome.err().unwrap_or(done));
+        self.reload();
     }
-}
 
-/// A name that no entry bears, damaged ones included.
-fn free_name(wanted: &str, shelved: &Shelved) -> String {
-    let taken = |name: &str| {
-        shelved.designs.iter().any(|(n, _)| n == name) || shelved.damaged.iter().any(|n| n == name)
-    };
-    let mut name = wanted.to_owned();
-    let mut number = 2;
-    while taken(&name) {
-        name = format!("{wanted} {number}");
-        number += 1;
+    /// Puts a text under a name.
+    fn put(self, name: &str, text: &str) -> Result<(), String> {
+        store(self.kind.prefix, name, text)
     }
-    name
-}
 
-/// The shelf of saved designs.
-#[component]
-pub(crate) fn Shelf(app: App) -> impl IntoView {
-    let shelved = RwSignal::new(load());
-    let message: RwSignal<Option<String>> = RwSignal::new(None);
-    let removed: RwSignal<Option<(String, Design)>> = RwSignal::new(None);
-    let listener = window_event_listener(leptos::ev::storage, move |_| shelved.set(load()));
-    on_cleanup(move || listener.remove());
-    let report = move |outcome: Result<(), String>, done: String| {
-        message.set(Some(outcome.map_or_else(|problem| problem, |()| done)));
-        shelved.set(load());
-    };
-    // What this tab last read from or wrote to storage: an entry that has changed since is
-    // somebody else's and is not replaced.
-    let known: StoredValue<Option<(String, Design)>> = StoredValue::new(None);
-    let save = move |_| {
-        let mut design = app.design.get_untracked();
-        let wanted = if design.name.trim().is_empty() {
+    fn save(self) {
+        let wanted = (self.kind.name)(self.app).trim().to_owned();
+        let wanted = if wanted.is_empty() {
             "unnamed".to_owned()
         } else {
-            design.name.trim().to_owned()
+            wanted
         };
-        let now = load();
-        let stored = now
-            .designs
-            .iter()
-            .find(|(name, _)| *name == wanted)
-            .cloned();
-        let ours = stored.is_none() || stored == known.get_value();
-        let name = if ours && !now.damaged.contains(&wanted) {
+        self.reload();
+        let now = self.shelved.get_untracked();
+        let ours = now.text(&wanted).is_some_and(|text| {
+            self.known
+                .with_value(|k| k.as_ref().is_some_and(|(n, t)| *n == wanted && t == text))
+        });
+        let name = if ours {
             wanted.clone()
         } else {
-            free_name(&wanted, &now)
+            now.free_name(&wanted)
         };
-        design.name.clone_from(&name);
-        let outcome = store(&name, &design);
+        let text = (self.kind.renamed)(&(self.kind.text)(self.app), &name);
+        let outcome = self.put(&name, &text);
         if outcome.is_ok() {
-            known.set_value(Some((name.clone(), design.clone())));
-            app.design.set(design);
+            (self.kind.set_name)(self.app, &name);
+            self.known.set_value(Some((name.clone(), text)));
         }
         let done = if name == wanted {
             format!("Saved as \"{name}\".")
         } else {
             format!("There was another \"{wanted}\" already, which stays: saved as \"{name}\".")
         };
-        report(outcome, done);
-    };
-    let remove = move |name: String, design: Design| {
-        forget(&name);
-        removed.set(Some((name.clone(), design)));
-        report(Ok(()), format!("\"{name}\" was deleted."));
-    };
-    let undo = move |_| {
-        if let Some((name, design)) = removed.get_untracked() {
-            let name = free_name(&name, &shelved.get_untracked());
-            let outcome = store(&name, &design);
-            if outcome.is_ok() {
-                removed.set(None);
-            }
-            report(outcome, format!("\"{name}\" is back."));
+        self.report(outcome, done);
+    }
+
+    /// Puts a text under its name, or under a free one beside it; the name that it has now.
+    pub(crate) fn add(self, wanted: &str, text: &str) -> Result<String, String> {
+        self.reload();
+        let name = self.shelved.with_untracked(|s| s.free_name(wanted));
+        let outcome = self.put(&name, &(self.kind.renamed)(text, &name));
+        self.reload();
+        outcome.map(|()| name)
+    }
+
+    fn open(self, name: &str, text: &str) {
+        self.known
+            .set_value(Some((name.to_owned(), text.to_owned())));
+        self.take(name, text);
+    }
+
+    /// Puts a text on the page; the one that stood there can be had back.
+    fn take(self, name: &str, text: &str) {
+        let before = (self.kind.text)(self.app);
+        self.before.set(Some(before));
+        self.message.set(format!("\"{name}\" is on the page."));
+        (self.kind.take)(self.app, text);
+    }
+
+    fn copy(self, name: &str, text: &str) {
+        match self.add(name, text) {
+            Ok(name) => self.message.set(format!("Copied to \"{name}\".")),
+            Err(problem) => self.message.set(problem),
         }
-    };
-    let duplicate = move |name: String, design: Design| {
-        let name = free_name(&name, &shelved.get_untracked());
-        let design = Design {
-            name: name.clone(),
-            ..design
-        };
-        report(store(&name, &design), format!("Copied to \"{name}\"."));
-    };
-    let rename = move |old: String, design: Design| {
-        let wanted = app.design.with_untracked(|d| d.name.trim().to_owned());
+    }
+
+    fn rename(self, old: &str, text: &str) {
+        let wanted = (self.kind.name)(self.app).trim().to_owned();
         if wanted.is_empty() || wanted == old {
-            message.set(Some(
-                "Type the new name in the name field above first.".to_owned(),
-            ));
+            self.message
+                .set("Type the new name in the name field above first.".to_owned());
             return;
         }
-        let name = free_name(&wanted, &shelved.get_untracked());
-        let outcome = store(
-            &name,
-            &Design {
-                name: name.clone(),
-                ..design
+        match self.add(&wanted, text) {
+            Ok(name) => {
+                forget(self.kind.prefix, old);
+                self.report(Ok(()), format!("\"{old}\" is now \"{name}\"."));
+            }
+            Err(problem) => self.message.set(problem),
+        }
+    }
+
+    fn remove(self, name: &str, text: &str) {
+        forget(self.kind.prefix, name);
+        self.removed.set(Some((name.to_owned(), text.to_owned())));
+        self.report(Ok(()), format!("\"{name}\" was deleted."));
+    }
+
+    fn undo(self) {
+        let Some((name, text)) = self.removed.get_untracked() else {
+            return;
+        };
+        match self.add(&name, &text) {
+            Ok(name) => {
+                self.removed.set(None);
+                self.message.set(format!("\"{name}\" is back."));
+            }
+            Err(problem) => self.message.set(problem),
+        }
+    }
+
+    fn go_back(self) {
+        if let Some(text) = self.before.get_untracked() {
+            self.before.set(None);
+            self.message.set("The one before is back.".to_owned());
+            (self.kind.take)(self.app, &text);
+        }
+    }
+
+    /// A line of what comes with the page: it can be taken, not changed.
+    pub(crate) fn sample(self, name: String, text: &'static str, detail: String) -> AnyView {
+        let own = name.clone();
+        let take = press(move || self.take(&own, text));
+        view! { <li>{opener(name, detail, take)}</li> }.into_any()
+    }
+
+    fn entry(self, name: String, text: String) -> AnyView {
+        let act = |what: &'static str, act: fn(Self, &str, &str)| {
+            let (own, text) = (name.clone(), text.clone());
+            let said = Some(format!("{what} {name}"));
+            named_button("", what, said, press(move || act(self, &own, &text)))
+        };
+        let buttons = vec![
+            act("copy", Self::copy),
+            act("rename", Self::rename),
+            act("delete", Self::remove),
+        ];
+        let detail = (self.kind.detail)(&text);
+        let (own, own_text) = (name.clone(), text);
+        let open = press(move || self.open(&own, &own_text));
+        view! { <li>{opener(name, detail, open)}{buttons}</li> }.into_any()
+    }
+
+    /// The button that saves, and the way back from a deletion.
+    pub(crate) fn buttons(self) -> AnyView {
+        let [save, undo, back, message] = self.kind.tests;
+        let undelete = when(
+            move || self.removed.get().is_some(),
+            move || button(undo, "Undo delete", press(move || self.undo())),
+        );
+        let before = when(
+            move || self.before.get().is_some(),
+            move || {
+                let words = "Back to the one before";
+                button(back, words, press(move || self.go_back()))
             },
         );
-        if outcome.is_ok() {
-            forget(&old);
-        }
-        report(outcome, format!("\"{old}\" is now \"{name}\"."));
-    };
-    let pasted = RwSignal::new(String::new());
-    let open_file = move |_| match file::read(&pasted.get_untracked()) {
-        Ok(design) => {
-            app.replace(design);
-            message.set(Some("The pasted design is open.".to_owned()));
-        }
-        Err(error) => message.set(Some(error.to_string())),
-    };
-    view! {
-        <section class="card">
-            <h2>"Designs"</h2>
-            <p class="field">
-                <label for="field-name">"Name of this design"</label>
-                <input id="field-name" data-test="field-name" type="text" maxlength="80" autocomplete="off"
-                    prop:value=move || app.design.with(|d| d.name.clone())
-                    on:input:target=move |e| app.design.update(|d| d.name = e.target().value())/>
-            </p>
+        let blocked = when(
+            move || self.shelved.get().blocked,
+            || {
+                view! { <p class="problem">"This browser blocks storage: what is on the page lives in its link alone."</p> }
+                    .into_any()
+            },
+        );
+        view! {
             <p class="buttons">
-                <button type="button" data-test="save" on:click=save>"Save in this browser"</button>
-                <Show when=move || removed.get().is_some()>
-                    <button type="button" data-test="undo" on:click=undo>"Undo delete"</button>
-                </Show>
+                {button(save, self.kind.save, press(move || self.save()))}
+                {undelete}
+                {before}
             </p>
-            <p role="status" class="readout" data-test="shelf-message">{move || message.get()}</p>
-            {move || shelved.get().blocked.then(|| view! { <p class="problem">"This browser blocks storage: designs live in the link alone."</p> })}
-            <ul class="shelf">
-                {move || shelved.get().designs.into_iter().map(|(name, design)| {
-                    let (d1, d2, d3, d4) = (design.clone(), design.clone(), design.clone(), design);
-                    let (n1, n2, n3, n4) = (name.clone(), name.clone(), name.clone(), name.clone());
-                    view! {
-                        <li>
-                            <button type="button" class="open" on:click=move |_| { known.set_value(Some((n4.clone(), d1.clone()))); app.replace(d1.clone()); }>{name}</button>
-                            <button type="button" on:click=move |_| duplicate(n1.clone(), d2.clone())>"copy"</button>
-                            <button type="button" on:click=move |_| rename(n2.clone(), d3.clone())>"rename"</button>
-                            <button type="button" on:click=move |_| remove(n3.clone(), d4.clone())>"delete"</button>
-                        </li>
-                    }
-                }).collect_view()}
-            </ul>
-            <ul class="plain">
-                {move || shelved.get().damaged.into_iter().map(|name| view! { <li class="problem">{format!("\"{name}\" is stored but cannot be read; it is left as it is.")}</li> }).collect_view()}
-            </ul>
-            <details>
-                <summary>"This design as a file"</summary>
-                <textarea readonly rows="8" aria-label="Design file" data-test="file">{move || app.design.with(file::write)}</textarea>
-                <textarea rows="4" aria-label="Paste a design file" placeholder="Paste a design file here" on:input:target=move |e| pasted.set(e.target().value())></textarea>
-                <p class="buttons"><button type="button" on:click=open_file>"Open the pasted file"</button></p>
-            </details>
-        </section>
+            <p role="status" class="origin" data-test=message>{live(move || self.message.get())}</p>
+            {blocked}
+        }
+        .into_any()
     }
+
+    /// What is saved.
+    pub(crate) fn list(self) -> AnyView {
+        let entries = list(move || {
+            let entries = self.shelved.get().entries;
+            entries
+                .into_iter()
+                .map(|(name, text)| self.entry(name, text))
+                .collect()
+        });
+        let damaged = list(move || {
+            let damaged = self.shelved.get().damaged;
+            let say =
+                |name| format!("\"{name}\" is stored but cannot be read; it is left as it is.");
+            damaged
+                .into_iter()
+                .map(|name| line("problem", say(name)))
+                .collect()
+        });
+        view! {
+            <ul class="shelf">{entries}</ul>
+            <ul class="plain">{damaged}</ul>
+        }
+        .into_any()
+    }
+
+    /// Every text that is saved.
+    pub(crate) fn texts(self) -> Vec<String> {
+        let entries = self.shelved.get().entries;
+        entries.into_iter().map(|(_, text)| text).collect()
+    }
+}
+
+/// The button that puts a kept thing on the page.
+fn opener(name: String, detail: String, open: Press) -> AnyView {
+    view! { <button type="button" class="open" on:click=open><span>{name}</span><small>{detail}</small></button> }
+        .into_any()
 }

@@ -1,8 +1,9 @@
 //! Ground state: one design. Everything else on the page is derived from it.
 
 use crate::examples;
+use crate::plot::Sight;
 use evenfall_engine::answer::{Answer, Solved};
-use evenfall_engine::design::Design;
+use evenfall_engine::design::{Design, Feed};
 use evenfall_engine::exchange::link;
 use evenfall_engine::quantity;
 use leptos::prelude::*;
@@ -22,6 +23,8 @@ pub(crate) struct App {
     pub(crate) shown: Memo<Arc<Design>>,
     /// Counts the designs opened: text half typed belongs to the one before.
     pub(crate) opened: RwSignal<u32>,
+    /// What the plots are seen on.
+    pub(crate) sight: Sight,
     /// What the person should be told outside any field.
     pub(crate) notices: RwSignal<Vec<String>>,
 }
@@ -50,6 +53,7 @@ impl App {
             last,
             shown,
             opened: RwSignal::new(0),
+            sight: Sight::new(),
             notices: RwSignal::new(notices),
         }
     }
@@ -67,13 +71,20 @@ impl App {
             Answer::Solved(_) => None,
         }
     }
+
+    /// A feed coil with which there would be a stage, where the design is refused for want of it.
+    pub(crate) fn offer(&self) -> Option<Feed> {
+        match &*self.answer.get() {
+            Answer::Refused(refusal) => refusal.offer,
+            Answer::Solved(_) => None,
+        }
+    }
 }
 
 fn from_address() -> (Design, Vec<String>) {
     let hash = window().location().hash().unwrap_or_default();
-    let start = || examples::all().remove(0).1;
     if hash.len() < 2 {
-        return (start(), Vec::new());
+        return (examples::first(), Vec::new());
     }
     let (design, mut problems) = link::read(&hash);
     if problems.is_empty() {
@@ -83,7 +94,7 @@ fn from_address() -> (Design, Vec<String>) {
         0,
         "The link could not be read whole, so the starting design is shown.".to_owned(),
     );
-    (start(), problems)
+    (examples::first(), problems)
 }
 
 /// Keeps the address's fragment at the design, and the design at a fragment edited by hand.

@@ -3,8 +3,9 @@
 //! Rows are made a few milliseconds at a time, so that the page answers meanwhile; the last
 //! picture stays until the new one is whole.
 
-use crate::fields::{Field, Typing};
+use crate::fields::{Input, Quantity, Typing, fields, input};
 use crate::figures::{per_cent, tidy};
+use crate::pieces::{button, cell, choice, live, number, one_of, press, row, when};
 use crate::state::App;
 use evenfall_engine::design::Design;
 use evenfall_engine::quantity;
@@ -84,9 +85,30 @@ const STRIPS: [Strip; 5] = [
     },
 ];
 
+static BAND: [Quantity; 2] = [
+    Quantity::optional(
+        "band_low",
+        "Band from (for the loaded Q)",
+        "Hz",
+        (
+            |d| d.brief.band_hz.map(|b| b[0]),
+            |d, v| d.brief.band_hz = v.map(|v| [v, d.brief.band_hz.map_or(v, |b| b[1])]),
+        ),
+    )
+    .hint("Power and efficiency at the band's edges are shown beside each loaded Q."),
+    Quantity::optional(
+        "band_high",
+        "Band to",
+        "Hz",
+        (
+            |d| d.brief.band_hz.map(|b| b[1]),
+            |d, v| d.brief.band_hz = v.map(|v| [d.brief.band_hz.map_or(v, |b| b[0]), v]),
+        ),
+    ),
+];
+
 /// The card; its studies run while it is open.
-#[component]
-pub(crate) fn Studies(app: App) -> impl IntoView {
+pub(crate) fn studies(app: App) -> AnyView {
     let open = RwSignal::new(false);
     let kind = RwSignal::new(0usize);
     let range = RwSignal::new(offered(0, app));
@@ -150,78 +172,86 @@ pub(crate) fn Studies(app: App) -> impl IntoView {
         let found = window(&rows)?;
         (KINDS[kind.get()].0 == Moves::LoadedQ).then(|| rows[found.best].at)
     };
-    let take = move |_| {
+    let take = move || {
         if let Some(q) = best() {
             let q = quantity::parse(&quantity::format(q, ""), "").unwrap_or(q);
             app.design.update(|d| d.stage.loaded_q = q);
         }
+    };
+    let options: Vec<(String, &'static str)> = KINDS
+        .iter()
+        .enumerate()
+        .map(|(k, (_, name, _))| (k.to_string(), *name))
+        .collect();
+    let ends = one_of(
+        move || kind.get(),
+        move |kind| {
+            let unit = KINDS[kind].2;
+            vec![edge(app, range, unit, false), edge(app, range, unit, true)].into_any()
+        },
+    );
+    let take_over = when(
+        move || best().is_some(),
+        move || {
+            let words = "Take the best point over as the design";
+            button("study-take", words, press(take))
+        },
+    );
+    let done = move || {
+        let done = progress.get();
+        done.map_or_else(String::new, |done| format!("{done} of {POINTS} points"))
     };
     view! {
         <section class="card">
             <details on:toggle=move |_| open.update(|o| *o = !*o)>
                 <summary data-test="studies"><h2>"Studies"</h2></summary>
                 <div class="grid">
-                    <span class="field">
-                        <label for="study-kind">"Move"</label>
-                        <select id="study-kind" data-test="study-kind" on:change:target=move |e| choose(e.target().value())>
-                            {KINDS.iter().enumerate().map(|(k, (_, name, _))| view! { <option value=k.to_string()>{*name}</option> }).collect_view()}
-                        </select>
-                    </span>
-                    {move || {
-                        kind.track();
-                        view! {
-                            <Edge app range unit=unit() upper=false/>
-                            <Edge app range unit=unit() upper=true/>
-                        }
-                    }}
-                    <Field app name="band_low" label="Band from (for the loaded Q)" unit="Hz" optional=true hint="Power and efficiency at the band's edges are shown beside each loaded Q." get=|d| d.brief.band_hz.map(|b| b[0]) set=|d, v| d.brief.band_hz = v.map(|v| [v, d.brief.band_hz.map_or(v, |b| b[1])])/>
-                    <Field app name="band_high" label="Band to" unit="Hz" optional=true get=|d| d.brief.band_hz.map(|b| b[1]) set=|d, v| d.brief.band_hz = v.map(|v| [d.brief.band_hz.map_or(v, |b| b[0]), v])/>
+                    <span class="field">{choice("study-kind", "Move", &options, move || kind.get().to_string(), Box::new(choose))}</span>
+                    {ends}
+                    {fields(app, &BAND)}
                 </div>
-                <p class="problem" role="status">{move || refused.get()}</p>
-                <p class="summary" data-test="study-verdict" aria-live="polite">{verdict}</p>
-                <p class="buttons">
-                    <Show when=move || best().is_some()>
-                        <button type="button" data-test="study-take" on:click=take>"Take the best point over as the design"</button>
-                    </Show>
-                </p>
-                <p class="origin">{move || progress.get().map(|done| format!("{done} of {POINTS} points"))}</p>
-                {move || picture(&rows.get(), unit())}
+                <p class="problem" role="status">{live(move || refused.get().unwrap_or_default())}</p>
+                <p class="summary" data-test="study-verdict" aria-live="polite">{live(verdict)}</p>
+                <p class="buttons">{take_over}</p>
+                <p class="origin">{live(done)}</p>
+                {live(move || picture(&rows.get(), unit()))}
                 <details>
                     <summary>"As figures"</summary>
-                    {move || table(&rows.get(), unit())}
+                    {live(move || table(&rows.get(), unit()))}
                 </details>
                 <p class="origin">"Each point is an exact solve. Parts and the warm on-resistance stay where the parts are as they are."</p>
             </details>
         </section>
     }
+    .into_any()
 }
 
 /// An end of the range.
-#[component]
-fn Edge(app: App, range: RwSignal<(f64, f64)>, unit: &'static str, upper: bool) -> impl IntoView {
-    let typing = Typing::new(app);
+fn edge(app: App, range: RwSignal<(f64, f64)>, unit: &'static str, upper: bool) -> AnyView {
     let (id, label) = if upper {
         ("study-to", "to")
     } else {
         ("study-from", "from")
     };
-    let value = move || if upper { range.get().1 } else { range.get().0 };
-    let input = move |text: String| {
-        if let Some(number) = typing.read(text, unit, false) {
+    let put = move |number: Option<f64>| {
+        if let Some(number) = number {
             range.update(|r| if upper { r.1 = number } else { r.0 = number });
         }
+    };
+    let own = Input {
+        id: id.to_owned(),
+        unit,
+        optional: false,
+        value: Memo::new(move |_| Some(if upper { range.get().1 } else { range.get().0 })),
+        put: Box::new(put),
     };
     view! {
         <span class="field">
             <label for=id>{label}</label>
-            <input id=id data-test=id type="text" autocomplete="off"
-                prop:value=move || typing.shown(Some(value()), unit)
-                aria-invalid=move || typing.problem.get().is_some().to_string()
-                on:input:target=move |e| input(e.target().value())
-                on:blur=move |_| { typing.leave(); }/>
-            <span class="problem" role="status">{move || typing.problem.get()}</span>
+            {input(Typing::new(app), own)}
         </span>
     }
+    .into_any()
 }
 
 /// Where a run puts what it makes.
@@ -272,85 +302,108 @@ fn window_performance() -> f64 {
         .map_or(0.0, |p| p.now())
 }
 
-fn picture(rows: &[Row], unit: &'static str) -> Option<impl IntoView + use<>> {
-    const WIDTH: f64 = 560.0;
-    const HEIGHT: f64 = 64.0;
-    let count = rows.len().checked_sub(1).filter(|c| *c > 0)?;
-    let x = move |k: usize| WIDTH * k as f64 / count as f64;
-    let shade = window(rows).map(|Window { from, to, .. }| {
-        let place = |at: f64| rows.iter().position(|row| row.at == at).unwrap_or(0);
-        (x(place(from)), x(place(to)))
+/// One strip: its caption, the window in which every limit is met, and the line.
+fn strip(strip: &Strip, rows: &[Row], shade: Option<(f64, f64)>) -> AnyView {
+    let value = |row: &Row| row.outcome.as_ref().ok().map(strip.value);
+    let known = || rows.iter().filter_map(value);
+    let least = known().fold(f64::INFINITY, f64::min);
+    let most = known().fold(f64::NEG_INFINITY, f64::max);
+    // A line that moves by less than a ten-thousandth is drawn straight.
+    let scale = 1e-4 * most.abs().max(least.abs());
+    let span = (most - least).max(scale).max(1e-300);
+    let mut path = String::new();
+    let mut pen = 'M';
+    for (k, row) in rows.iter().enumerate() {
+        match value(row) {
+            Some(v) => {
+                let y = HEIGHT - 4.0 - (HEIGHT - 8.0) * (v - least) / span;
+                path.push_str(&format!("{pen}{:.1} {y:.1}", place(rows, k)));
+                pen = 'L';
+            }
+            None => pen = 'M',
+        }
+    }
+    let show = |v: f64| match strip.unit {
+        "%" => format!("{v:.2} %"),
+        unit => quantity::format(v, unit),
+    };
+    let caption = if least <= most {
+        format!(" {} to {}", show(least), show(most))
+    } else {
+        " no stage in this range".to_owned()
+    };
+    let shade = shade.map(|(a, b)| {
+        let (x, wide) = (a.to_string(), (b - a).max(2.0).to_string());
+        view! { <rect class="window" x=x y="0" width=wide height="64"/> }.into_any()
     });
-    let strips = STRIPS
-        .iter()
-        .map(|strip| {
-            let values: Vec<Option<f64>> = rows.iter().map(|r| r.outcome.as_ref().ok().map(strip.value)).collect();
-            let known = || values.iter().flatten().copied();
-            let least = known().fold(f64::INFINITY, f64::min);
-            let most = known().fold(f64::NEG_INFINITY, f64::max);
-            // A line that moves by less than a ten-thousandth is drawn straight.
-            let span = (most - least).max(1e-4 * most.abs().max(least.abs())).max(1e-300);
-            let mut path = String::new();
-            let mut pen = 'M';
-            for (k, value) in values.iter().enumerate() {
-                match value {
-                    Some(v) => {
-                        let y = HEIGHT - 4.0 - (HEIGHT - 8.0) * (v - least) / span;
-                        path.push_str(&format!("{pen}{:.1} {y:.1}", x(k)));
-                        pen = 'L';
-                    }
-                    None => pen = 'M',
-                }
-            }
-            let caption = if least <= most {
-                let show = |v: f64| if strip.unit == "%" { format!("{v:.2} %") } else { quantity::format(v, strip.unit) };
-                format!("{} to {}", show(least), show(most))
-            } else {
-                "no stage in this range".to_owned()
-            };
-            view! {
-                <figure>
-                    <figcaption><b>{strip.label}</b>" "{caption}</figcaption>
-                    <svg class="strip" viewBox=format!("0 0 {WIDTH} {HEIGHT}") preserveAspectRatio="none" role="img" aria-label=strip.label>
-                        {shade.map(|(a, b)| view! { <rect class="window" x=a y="0" width=(b - a).max(2.0) height=HEIGHT/> })}
-                        <path d=path/>
-                    </svg>
-                </figure>
-            }
-        })
-        .collect_view();
-    let ends = format!(
-        "{} to {}; shaded where every limit is met",
-        quantity::format(rows[0].at, unit),
-        quantity::format(rows[count].at, unit)
-    );
-    Some(view! { <div class="study">{strips}</div><p class="origin">{ends}</p> })
+    view! {
+        <figure>
+            <figcaption><b>{strip.label}</b>{caption}</figcaption>
+            <svg class="strip" viewBox="0 0 560 64" preserveAspectRatio="none" role="img" aria-label=strip.label>
+                {shade}
+                <path d=path/>
+            </svg>
+        </figure>
+    }
+    .into_any()
 }
 
-fn table(rows: &[Row], unit: &'static str) -> impl IntoView + use<> {
-    let lines = rows
-        .iter()
-        .map(|row| {
-            let at = quantity::format(row.at, unit);
-            match &row.outcome {
-                Ok(p) => {
-                    let harmonic = p.harmonics_dbc.iter().copied().fold(f64::NEG_INFINITY, f64::max);
-                    let band = p.band_power_w.map_or_else(String::new, |[a, b]| {
-                        format!("{} to {}", quantity::format(a, "W"), quantity::format(b, "W"))
-                    });
-                    view! {
-                        <tr><th scope="row">{at}</th><td class="number">{quantity::format(p.output_power_w, "W")}</td><td class="number">{per_cent(p.drain_efficiency)}</td><td class="number">{quantity::format(p.drain_peak_v, "V")}</td><td class="number">{format!("{harmonic:.1} dBc")}</td><td class="number">{band}</td><td>{p.failing.join(", ")}</td></tr>
-                    }
-                    .into_any()
-                }
-                Err(reason) => view! { <tr><th scope="row">{at}</th><td colspan="6">{reason.clone()}</td></tr> }.into_any(),
-            }
-        })
-        .collect_view();
+const WIDTH: f64 = 560.0;
+const HEIGHT: f64 = 64.0;
+
+/// How far to the right a row stands.
+fn place(rows: &[Row], k: usize) -> f64 {
+    WIDTH * k as f64 / (rows.len() - 1) as f64
+}
+
+fn picture(rows: &[Row], unit: &'static str) -> AnyView {
+    let [first, .., last] = rows else {
+        return ().into_any();
+    };
+    let shade = window(rows).map(|Window { from, to, .. }| {
+        let find = |at: f64| rows.iter().position(|row| row.at == at).unwrap_or(0);
+        (place(rows, find(from)), place(rows, find(to)))
+    });
+    let strips: Vec<AnyView> = STRIPS.iter().map(|s| strip(s, rows, shade)).collect();
+    let ends = format!(
+        "{} to {}; shaded where every limit is met",
+        quantity::format(first.at, unit),
+        quantity::format(last.at, unit)
+    );
+    view! { <div class="study">{strips}</div><p class="origin">{ends}</p> }.into_any()
+}
+
+fn table_row(table: &Row, unit: &str) -> AnyView {
+    let at = quantity::format(table.at, unit);
+    let cells = match &table.outcome {
+        Ok(p) => {
+            let most = f64::NEG_INFINITY;
+            let harmonic = p.harmonics_dbc.iter().copied().fold(most, f64::max);
+            let watt = |w: f64| quantity::format(w, "W");
+            let band = p.band_power_w;
+            let band =
+                band.map_or_else(String::new, |[a, b]| format!("{} to {}", watt(a), watt(b)));
+            vec![
+                number(watt(p.output_power_w)),
+                number(per_cent(p.drain_efficiency)),
+                number(quantity::format(p.drain_peak_v, "V")),
+                number(format!("{harmonic:.1} dBc")),
+                number(band),
+                cell("", "", p.failing.join(", ")),
+            ]
+        }
+        Err(reason) => vec![view! { <td colspan="6">{reason.clone()}</td> }.into_any()],
+    };
+    row("", None, at, cells)
+}
+
+fn table(rows: &[Row], unit: &'static str) -> AnyView {
+    let lines: Vec<AnyView> = rows.iter().map(|row| table_row(row, unit)).collect();
     view! {
         <div class="scroll"><table>
             <thead><tr><th scope="col">"At"</th><th scope="col" class="number">"Power"</th><th scope="col" class="number">"Efficiency"</th><th scope="col" class="number">"Drain peak"</th><th scope="col" class="number">"Harmonic"</th><th scope="col" class="number">"Power over the band"</th><th scope="col">"Not met"</th></tr></thead>
             <tbody>{lines}</tbody>
         </table></div>
     }
+    .into_any()
 }

@@ -8,6 +8,7 @@ use wasm_bindgen::prelude::wasm_bindgen;
 /// Microseconds for one steady state of four states with ten harmonics, and for one sizing,
 /// each the mean of `rounds`.
 #[wasm_bindgen]
+#[allow(unreachable_pub, reason = "the glue calls it")]
 pub fn microseconds_a_solve(rounds: u32) -> Vec<f64> {
     let clock = || {
         leptos::prelude::window()

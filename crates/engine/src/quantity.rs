@@ -77,8 +77,10 @@ fn prefix_power(c: char) -> Option<i32> {
 }
 
 fn is_unit(found: &str, wanted: &str) -> bool {
-    let plain = |s: &str| match s.to_lowercase().trim_start_matches('°') {
-        "ω" | "ohms" | "r" | "ohm" => "ohm".to_owned(),
+    // The tables of every alphabet's small letters are 5 kB to send: only the ohm sign and the
+    // Greek letter need them here.
+    let plain = |s: &str| match s.to_ascii_lowercase().trim_start_matches('°') {
+        "\u{3c9}" | "\u{3a9}" | "\u{2126}" | "ohms" | "r" | "ohm" => "ohm".to_owned(),
         other => other.to_owned(),
     };
     found.is_empty() || plain(found) == plain(wanted)
@@ -156,7 +158,7 @@ pub fn parse(text: &str, unit: &str) -> Result<f64, QuantityError> {
         }
     }
     let word: String = tail.iter().collect();
-    let value: f64 = number.parse().map_err(|_| wrong())?;
+    let value = decimal(&number).ok_or_else(wrong)?;
     if !is_unit(&word, unit) {
         let odd = word.chars().any(|c| c.is_ascii_digit() || c == '.');
         return Err(if odd {
@@ -189,9 +191,27 @@ fn shift(number: &str, power: i32) -> Option<f64> {
         Some((digits, exponent)) => (digits, exponent.parse::<i32>().ok()?),
         None => (number, 0),
     };
-    format!("{digits}e{}", exponent.saturating_add(power))
-        .parse()
-        .ok()
+    decimal(&format!("{digits}e{}", exponent.saturating_add(power)))
+}
+
+/// The double nearest to a decimal number, infinite where there is none. Read by the reader
+/// of design files, so that the page does not carry the standard library's beside it (12 kB).
+fn decimal(number: &str) -> Option<f64> {
+    let (sign, rest) = match number.strip_prefix('-') {
+        Some(rest) => ("-", rest),
+        None => ("", number.strip_prefix('+').unwrap_or(number)),
+    };
+    let (digits, exponent) = rest.split_once(['e', 'E']).unwrap_or((rest, "0"));
+    let (whole, part) = digits.split_once('.').unwrap_or((digits, ""));
+    let plain = |s: &str| s.bytes().all(|b| b.is_ascii_digit());
+    if (whole.is_empty() && part.is_empty()) || !plain(whole) || !plain(part) {
+        return None;
+    }
+    let whole = whole.trim_start_matches('0');
+    // Both padded with a nought, so that JSON takes them.
+    let whole = if whole.is_empty() { "0" } else { whole };
+    let json = format!("{sign}{whole}.{part}0e{exponent}");
+    Some(serde_json::from_str(&json).unwrap_or(f64::INFINITY))
 }
 
 /// `value` with four significant digits, an SI prefix and the unit: "13.56 MHz".
@@ -219,7 +239,7 @@ pub fn format(value: f64, unit: &str) -> String {
         (_, _, Some(prefix)) => (prefix, exponent - group),
         _ => return format!("{sign}{}e{exponent}{space}{unit}", trimmed(digits)),
     };
-    let mantissa: f64 = format!("{digits}e{shift}").parse().unwrap_or(0.0);
+    let mantissa: f64 = decimal(&format!("{digits}e{shift}")).unwrap_or(0.0);
     let decimals = usize::try_from((3 - shift).clamp(0, 9)).unwrap_or(0);
     let text = format!("{mantissa:.decimals$}");
     let space = if prefix.is_empty() && unit.is_empty() {
@@ -277,6 +297,12 @@ mod tests {
             ("125 C", "°C", 125.0),
             ("3 K/W", "K/W", 3.0),
             ("12nC", "C", 12e-9),
+            (".5", "", 0.5),
+            ("+007.", "", 7.0),
+            ("-0.1e-3", "", -1e-4),
+            ("4,7 \u{2126}", "Ω", 4.7),
+            ("1 Ω", "ohm", 1.0),
+            ("12345678901234567890123", "", 12345678901234567890123.0),
         ] {
             assert_eq!(parse(text, unit), Ok(want), "{text} in {unit}");
         }

@@ -1,6 +1,6 @@
 //! The design file, version 1.
 
-use crate::design::{Design, VERSION};
+use crate::design::{Design, Device, VERSION};
 use std::fmt;
 
 /// Why a text is no design file.
@@ -8,6 +8,11 @@ use std::fmt;
 pub enum FileError {
     /// Not the JSON of a design; the message names the field and the place.
     Content {
+        /// What the reader says.
+        message: String,
+    },
+    /// Not the JSON of a device, or of several; the message names the field and the place.
+    Device {
         /// What the reader says.
         message: String,
     },
@@ -22,6 +27,7 @@ impl fmt::Display for FileError {
     fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
         match self {
             Self::Content { message } => write!(f, "this is not a design file: {message}"),
+            Self::Device { message } => write!(f, "this is no device: {message}"),
             Self::Version { found } => {
                 write!(
                     f,
@@ -79,6 +85,26 @@ pub fn write(design: &Design) -> String {
     serde_json::to_string_pretty(design).unwrap_or_default()
 }
 
+/// One device (the design file's `device` object), or an array of them.
+///
+/// # Errors
+/// See [`FileError`].
+pub fn read_devices(text: &str) -> Result<Vec<Device>, FileError> {
+    let devices = if text.trim_start().starts_with('[') {
+        serde_json::from_str(text)
+    } else {
+        serde_json::from_str(text).map(|device| vec![device])
+    };
+    devices.map_err(|e| FileError::Device {
+        message: e.to_string(),
+    })
+}
+
+/// The device as the design file's `device` object.
+pub fn write_device(device: &Device) -> String {
+    serde_json::to_string_pretty(device).unwrap_or_default()
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -109,5 +135,18 @@ mod tests {
             read(r#"{"evenfall":9,"brief":{"carrier_hz":1e6}}"#),
             Err(FileError::Version { found: 9 })
         );
+    }
+
+    #[test]
+    fn devices_read_alone_and_in_an_array_and_come_back() {
+        let text = r#"{"name":"sample","on_resistance_ohm":0.12,
+          "capacitance":{"kind":"points","v":[0,10,48],"c_f":[9e-10,3e-10,1e-10]}}"#;
+        let alone = read_devices(text).expect("one");
+        assert_eq!(read_devices(&write_device(&alone[0])), Ok(alone.clone()));
+        let two = read_devices(&format!("[{text},\n{{}}]")).expect("two");
+        assert_eq!(two, [alone[0].clone(), Device::default()]);
+        let error = read_devices(r#"[{"name":"a"},{"colour":3}]"#).expect_err("unknown field");
+        assert!(error.to_string().contains("colour"), "{error}");
+        assert!(read_devices("").is_err() && read_devices("3").is_err());
     }
 }

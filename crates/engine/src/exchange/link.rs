@@ -46,6 +46,11 @@ const SHORT: [(&str, &str); 34] = [
     ("xl", "fitted.drain_load.x_ohm"),
 ];
 
+/// Columns of numbers, each written as one pair.
+const TABLE: [&str; 2] = ["device.capacitance.v", "device.capacitance.c_f"];
+/// What ends each number of a column.
+const BETWEEN: &str = "_";
+
 /// What a link of version 1 leaves out: 60 W at 13.56 MHz from 48 V, loaded Q 7, a choke
 /// and an ideal switch.
 pub fn base() -> Design {
@@ -84,6 +89,15 @@ fn leaves(value: &Value, path: &str, into: &mut Vec<(String, Value)>) {
     };
     match value {
         Value::Object(map) => map.iter().for_each(|(key, v)| leaves(v, &join(key), into)),
+        Value::Array(list) if TABLE.contains(&path) => {
+            let numbers: Vec<String> = list.iter().map(|n| text(n) + BETWEEN).collect();
+            let column = if numbers.is_empty() {
+                BETWEEN.to_owned()
+            } else {
+                numbers.concat()
+            };
+            into.push((path.to_owned(), Value::String(column)));
+        }
         Value::Array(list) => list
             .iter()
             .enumerate()
@@ -196,6 +210,10 @@ fn path_of(name: &str) -> &str {
 fn scalar(path: &str, text: &str) -> Value {
     if path == "name" || path == "device.name" {
         return Value::String(text.to_owned());
+    }
+    if TABLE.contains(&path) && text.contains(BETWEEN) {
+        let numbers = text.split(BETWEEN).filter(|number| !number.is_empty());
+        return Value::Array(numbers.map(|number| scalar("", number)).collect());
     }
     if text == "none" && !path.ends_with("kind") {
         return Value::Null;
@@ -346,6 +364,28 @@ mod tests {
             design.stage.feed = Feed::Resonant { q: 1.412 };
             assert_eq!(read(&write(&design)), (design, Vec::new()));
         }
+    }
+
+    #[test]
+    fn a_long_table_and_an_empty_one_come_back() {
+        for count in [0, 1, 3, 200] {
+            let mut design = base();
+            design.device.capacitance = Capacitance::Points {
+                v: (0..count).map(|k| f64::from(k) / 3.0).collect(),
+                c_f: (0..count).map(|k| 1e-9 / (1.0 + f64::from(k))).collect(),
+            };
+            assert_eq!(read(&write(&design)), (design, Vec::new()), "{count} rows");
+        }
+        // As links were written before.
+        let (design, problems) = read(
+            "e=1&ck=points&device.capacitance.v.0=0&device.capacitance.v.1=9&device.capacitance.c_f.0=9e-10&device.capacitance.c_f.1=1e-10",
+        );
+        assert!(problems.is_empty(), "{problems:?}");
+        let want = Capacitance::Points {
+            v: vec![0.0, 9.0],
+            c_f: vec![9e-10, 1e-10],
+        };
+        assert_eq!(design.device.capacitance, want);
     }
 
     #[test]
