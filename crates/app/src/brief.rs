@@ -4,6 +4,7 @@ use crate::examples;
 use crate::fields::{Quantity, always, field, fields, maybe};
 use crate::pieces::{choice, line, list, one_of, when};
 use crate::state::App;
+use crate::topology::topology;
 use evenfall_engine::design::{Aim, Feed};
 use leptos::prelude::*;
 
@@ -29,11 +30,11 @@ static STAGE: [Quantity; 2] = [
 ];
 
 /// The kinds of feed coil: name in the design file, words, and the quantity that it has.
-const FEEDS: [(&str, &str, Quantity); 3] = [
+const FEEDS: [(&str, &str, Option<Quantity>); 5] = [
     (
         "choke",
         "choke",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed reactance over load",
             "",
@@ -48,12 +49,12 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
     (
         "resonant",
         "resonant",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed resonance over carrier, q",
             "",
@@ -68,12 +69,12 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
     (
         "inductance",
         "given L1",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed inductance",
             "H",
@@ -88,8 +89,10 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
+    ("parallel", "found: series branch resonant, X = 0", None),
+    ("load_independent", "found: soft for other loads too", None),
 ];
 
 static QUALITY: [Quantity; 2] = [
@@ -147,6 +150,8 @@ fn feed_kind(app: App) -> usize {
         Feed::Choke { .. } => 0,
         Feed::Resonant { .. } => 1,
         Feed::Inductance { .. } => 2,
+        Feed::Parallel {} => 3,
+        Feed::LoadIndependent {} => 4,
     })
 }
 
@@ -158,6 +163,8 @@ fn feed_choice(app: App) -> AnyView {
             d.stage.feed = match wanted.as_str() {
                 "resonant" => Feed::Resonant { q: 1.412 },
                 "inductance" => Feed::Inductance { l_h: now },
+                "parallel" => Feed::Parallel {},
+                "load_independent" => Feed::LoadIndependent {},
                 _ => Feed::default(),
             }
         });
@@ -241,9 +248,10 @@ pub(crate) fn brief(app: App) -> AnyView {
             <div class="grid">
                 {fields(app, &STAGE)}
                 <span class="field">{feed_choice(app)}</span>
-                {one_of(move || feed_kind(app), move |kind| field(app, FEEDS[kind].2))}
+                {one_of(move || feed_kind(app), move |kind| FEEDS[kind].2.map(|q| field(app, q)).into_any())}
                 {fields(app, &QUALITY)}
             </div>
+            {topology(app)}
             <p class="starts">{aim_choice(app)}</p>
             {open_load}
             <h3>"Limits"</h3>
