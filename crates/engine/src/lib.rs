@@ -5,9 +5,10 @@
 //!
 //! Layers, each knowing only those above it:
 //! [`quantity`] → [`circuit`] → [`dynamics`] → [`orbit`] → [`design`] → [`stage`] →
-//! [`sizing`] → [`exchange`].
+//! [`sizing`] → [`exchange`]. Beside the stage, on the circuit alone: [`ac`].
 #![forbid(unsafe_code)]
 
+pub mod ac;
 pub mod answer;
 pub mod design;
 pub mod exchange;
