@@ -5,13 +5,14 @@
 //!
 //! Layers, each knowing only those above it:
 //! [`quantity`] → [`circuit`] → [`dynamics`] → [`orbit`] → [`design`] → [`stage`] →
-//! [`sizing`] → [`exchange`]. Beside the stage, on the circuit alone: [`ac`].
+//! [`sizing`] → [`exchange`]. Beside the stage, on the circuit alone: [`ac`] → [`network`].
 #![forbid(unsafe_code)]
 
 pub mod ac;
 pub mod answer;
 pub mod design;
 pub mod exchange;
+pub mod network;
 pub mod quantity;
 pub mod sizing;
 pub mod stage;
