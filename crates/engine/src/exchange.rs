@@ -1,4 +1,5 @@
-//! Designs in and out: the design file and the link.
+//! Designs in and out: the design file and the link; networks: Touchstone files.
 
 pub mod file;
 pub mod link;
+pub mod touchstone;
