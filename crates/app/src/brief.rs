@@ -29,11 +29,11 @@ static STAGE: [Quantity; 2] = [
 ];
 
 /// The kinds of feed coil: name in the design file, words, and the quantity that it has.
-const FEEDS: [(&str, &str, Quantity); 3] = [
+const FEEDS: [(&str, &str, Option<Quantity>); 5] = [
     (
         "choke",
         "choke",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed reactance over load",
             "",
@@ -48,12 +48,12 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
     (
         "resonant",
         "resonant",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed resonance over carrier, q",
             "",
@@ -68,12 +68,12 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
     (
         "inductance",
         "given L1",
-        Quantity::needed(
+        Some(Quantity::needed(
             "feed_value",
             "Feed inductance",
             "H",
@@ -88,8 +88,10 @@ const FEEDS: [(&str, &str, Quantity); 3] = [
                     }
                 },
             ),
-        ),
+        )),
     ),
+    ("parallel", "series branch in resonance", None),
+    ("load_independent", "soft at other loads too", None),
 ];
 
 static QUALITY: [Quantity; 2] = [
@@ -147,6 +149,8 @@ fn feed_kind(app: App) -> usize {
         Feed::Choke { .. } => 0,
         Feed::Resonant { .. } => 1,
         Feed::Inductance { .. } => 2,
+        Feed::Parallel {} => 3,
+        Feed::LoadIndependent {} => 4,
     })
 }
 
@@ -158,6 +162,8 @@ fn feed_choice(app: App) -> AnyView {
             d.stage.feed = match wanted.as_str() {
                 "resonant" => Feed::Resonant { q: 1.412 },
                 "inductance" => Feed::Inductance { l_h: now },
+                "parallel" => Feed::Parallel {},
+                "load_independent" => Feed::LoadIndependent {},
                 _ => Feed::default(),
             }
         });
@@ -241,7 +247,7 @@ pub(crate) fn brief(app: App) -> AnyView {
             <div class="grid">
                 {fields(app, &STAGE)}
                 <span class="field">{feed_choice(app)}</span>
-                {one_of(move || feed_kind(app), move |kind| field(app, FEEDS[kind].2))}
+                {one_of(move || feed_kind(app), move |kind| FEEDS[kind].2.map(|value| field(app, value)).into_any())}
                 {fields(app, &QUALITY)}
             </div>
             <p class="starts">{aim_choice(app)}</p>
