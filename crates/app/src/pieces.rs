@@ -83,7 +83,7 @@ pub(crate) fn choice(
     label: &'static str,
     options: &[(String, &'static str)],
     now: impl Fn() -> String + Send + Sync + 'static,
-    mut chosen: Box<dyn FnMut(String)>,
+    chosen: Box<dyn FnMut(String)>,
 ) -> AnyView {
     let now = Memo::new(move |_| now());
     let options: Vec<AnyView> = options
@@ -95,7 +95,7 @@ pub(crate) fn choice(
             view! { <option value=value.clone() prop:selected=selected>{words}</option> }.into_any()
         })
         .collect();
-    let change = typed(move |value| chosen(value));
+    let change = typed(chosen);
     view! {
         <label for=id>{label}</label>
         <select id=id data-test=id on:change=change>{options}</select>

@@ -2,4 +2,5 @@
 
 pub mod file;
 pub mod link;
+mod read;
 pub mod touchstone;

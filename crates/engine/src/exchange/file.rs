@@ -1,6 +1,8 @@
 //! The design file, version 1.
 
+use super::read::FromJson;
 use crate::design::{Design, Device, VERSION};
+use serde_json::Value;
 use std::fmt;
 
 /// Why a text is no design file.
@@ -40,14 +42,24 @@ impl fmt::Display for FileError {
 
 impl std::error::Error for FileError {}
 
-fn check(design: Design) -> Result<Design, FileError> {
-    if design.evenfall == VERSION {
-        Ok(design)
-    } else {
-        Err(FileError::Version {
-            found: design.evenfall,
-        })
+fn json(text: &str) -> Result<Value, String> {
+    serde_json::from_str(text).map_err(|e| e.to_string())
+}
+
+/// One design out of a JSON value.
+///
+/// # Errors
+/// See [`FileError`].
+pub fn from_value(value: &Value) -> Result<Design, FileError> {
+    let version = value.get("evenfall").and_then(Value::as_u64);
+    if let Some(found) = version.and_then(|found| u32::try_from(found).ok())
+        && found != VERSION
+    {
+        return Err(FileError::Version { found });
     }
+    Design::from_json(value).map_err(|wrong| FileError::Content {
+        message: wrong.to_string(),
+    })
 }
 
 /// One design.
@@ -55,11 +67,8 @@ fn check(design: Design) -> Result<Design, FileError> {
 /// # Errors
 /// See [`FileError`].
 pub fn read(text: &str) -> Result<Design, FileError> {
-    serde_json::from_str(text)
-        .map_err(|e| FileError::Content {
-            message: e.to_string(),
-        })
-        .and_then(check)
+    let value = json(text).map_err(|message| FileError::Content { message })?;
+    from_value(&value)
 }
 
 /// One design or an array of them; the flag says whether it was an array.
@@ -67,16 +76,10 @@ pub fn read(text: &str) -> Result<Design, FileError> {
 /// # Errors
 /// See [`FileError`].
 pub fn read_many(text: &str) -> Result<(Vec<Design>, bool), FileError> {
-    if text.trim_start().starts_with('[') {
-        let designs: Vec<Design> = serde_json::from_str(text).map_err(|e| FileError::Content {
-            message: e.to_string(),
-        })?;
-        Ok((
-            designs.into_iter().map(check).collect::<Result<_, _>>()?,
-            true,
-        ))
-    } else {
-        Ok((vec![read(text)?], false))
+    let value = json(text).map_err(|message| FileError::Content { message })?;
+    match value {
+        Value::Array(list) => Ok((list.iter().map(from_value).collect::<Result<_, _>>()?, true)),
+        one => Ok((vec![from_value(&one)?], false)),
     }
 }
 
@@ -90,14 +93,17 @@ pub fn write(design: &Design) -> String {
 /// # Errors
 /// See [`FileError`].
 pub fn read_devices(text: &str) -> Result<Vec<Device>, FileError> {
-    let devices = if text.trim_start().starts_with('[') {
-        serde_json::from_str(text)
-    } else {
-        serde_json::from_str(text).map(|device| vec![device])
-    };
-    devices.map_err(|e| FileError::Device {
-        message: e.to_string(),
-    })
+    let wrong = |message| FileError::Device { message };
+    match json(text).map_err(wrong)? {
+        Value::Array(list) => {
+            let devices = list.iter().enumerate().map(|(index, value)| {
+                Device::from_json(value).map_err(|w| w.within(&format!("device {}", index + 1)))
+            });
+            devices.collect::<Result<_, _>>()
+        }
+        one => Device::from_json(&one).map(|device| vec![device]),
+    }
+    .map_err(|w| wrong(w.to_string()))
 }
 
 /// The device as the design file's `device` object.

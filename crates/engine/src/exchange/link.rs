@@ -116,10 +116,9 @@ fn text(value: &Value) -> String {
     match value {
         Value::String(s) => s.clone(),
         Value::Null => "none".to_owned(),
-        Value::Number(n) => n
-            .as_f64()
-            .map_or_else(|| n.to_string(), crate::quantity::format_exact),
-        other => other.to_string(),
+        Value::Number(n) => crate::quantity::format_exact(n.as_f64().unwrap_or_default()),
+        Value::Bool(yes) => yes.to_string(),
+        Value::Array(_) | Value::Object(_) => String::new(),
     }
 }
 
@@ -195,7 +194,7 @@ pub fn read(fragment: &str) -> (Design, Vec<String>) {
         ));
     }
     (
-        file::read(&design.to_string()).unwrap_or_else(|_| base()),
+        file::from_value(&design).unwrap_or_else(|_| base()),
         problems,
     )
 }
@@ -268,7 +267,7 @@ fn set(value: &mut Value, path: &str, leaf: Value) -> Option<()> {
 }
 
 fn valid(design: &Value) -> bool {
-    file::read(&design.to_string()).is_ok()
+    file::from_value(design).is_ok()
 }
 
 /// Sets one pair where the design stays valid by it.

@@ -314,15 +314,16 @@ fn clock(period_s: f64, until: f64, spans: &[(f64, f64, u32)]) -> Vec<ClockStep>
     let within = |at: f64| {
         if at > 1.0 { at - 1.0 } else { at }
     };
+    // Placed in order; the standard library's sort is 2 kB to send.
     let mut cuts: Vec<f64> = vec![0.0, until];
     for &(from, to, _) in spans {
-        cuts.extend(
-            [from, within(to)]
-                .iter()
-                .filter(|at| **at > 0.0 && **at < until),
-        );
+        for at in [from, within(to)] {
+            if at > 0.0 && at < until {
+                let place = cuts.partition_point(|cut| *cut < at);
+                cuts.insert(place, at);
+            }
+        }
     }
-    cuts.sort_unstable_by(f64::total_cmp);
     let mut steps = Vec::with_capacity(cuts.len());
     for pair in cuts.windows(2).filter(|pair| pair[1] > pair[0]) {
         let middle = 0.5 * (pair[0] + pair[1]);
