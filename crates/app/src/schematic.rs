@@ -36,26 +36,27 @@ fn label(app: App, index: usize, x: i32, y: i32, name: &'static str) -> Vec<AnyV
 
 /// What stands at the switch besides its resistance.
 fn switch_words(app: App) -> String {
-    let stacked = app
-        .last
-        .with(|s| s.as_ref().and_then(|s| s.values.stack))
-        .map_or_else(String::new, |n| format!("{n} stacked "));
     app.shown.with(|d| match &d.device.capacitance {
-        _ if d.device.per_width.is_some() => stacked,
-        Capacitance::None => stacked,
-        Capacitance::Constant { c_f } => {
-            format!("{stacked}with {}", quantity::format(*c_f, "F"))
-        }
-        _ => format!("{stacked}with C(v)"),
+        _ if d.device.per_width.is_some() => String::new(),
+        Capacitance::None => String::new(),
+        Capacitance::Constant { c_f } => format!("with {}", quantity::format(*c_f, "F")),
+        _ => "with C(v)".to_owned(),
     })
 }
 
-/// What the switch is: its resistance, or its width where that is known.
+/// What the switch is: its resistance, or its width where that is known; how many are stacked.
 fn switch_value(app: App) -> String {
-    let width = app.last.with(|s| s.as_ref().and_then(|s| s.values.width_m));
-    match width {
-        Some(metre) => format!("{} wide", quantity::format(metre, "m")),
+    let (width, stack) = app.last.with(|s| {
+        s.as_ref()
+            .map_or((None, None), |s| (s.values.width_m, s.values.stack))
+    });
+    let one = match width {
+        Some(metre) => quantity::format(metre, "m"),
         None => quantity::format(app.shown.with(|d| d.device.on_resistance_ohm), "Ω"),
+    };
+    match stack {
+        Some(count) => format!("{count} × {one}"),
+        None => one,
     }
 }
 

@@ -3,7 +3,7 @@
 #![allow(missing_docs, reason = "criterion's macros make undocumented items")]
 
 use criterion::{Criterion, criterion_group, criterion_main};
-use evenfall_engine::design::{Capacitance, Diode, Load};
+use evenfall_engine::design::{Capacitance, Diode, Form, Load};
 use evenfall_engine::exchange::link;
 use evenfall_engine::sizing;
 use evenfall_engine::stage::Stage;
@@ -54,6 +54,22 @@ fn solves(c: &mut Criterion) {
     c.bench_function("a full sizing with a junction capacitance", |b| {
         b.iter(|| evenfall_engine::solve(black_box(&curved)))
     });
+    let mut pair = link::base();
+    pair.stage.form = Form::Differential;
+    pair.device.on_resistance_ohm = 0.12;
+    pair.device.capacitance = Capacitance::Constant { c_f: 20e-12 };
+    pair.stage.coil_q = Some(200.0);
+    pair.stage.capacitor_q = Some(1000.0);
+    if let Ok((stage, _)) = sizing::sized_stage(&pair) {
+        let half = stage.layout().circuit.state_count();
+        c.bench_function(
+            &format!("differential steady state of {half} states, in halves"),
+            |b| b.iter(|| black_box(&stage).solve_to_harmonic(10)),
+        );
+        c.bench_function("what its sizing asks", |b| {
+            b.iter(|| black_box(&stage).turn_on())
+        });
+    }
     let design = link::base();
     c.bench_function("a full sizing", |b| {
         b.iter(|| evenfall_engine::solve(black_box(&design)))

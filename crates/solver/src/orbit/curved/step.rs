@@ -324,6 +324,9 @@ pub(super) fn spread(
     x: &DVector<f64>,
     free: &DVector<f64>,
 ) -> DVector<f64> {
+    if varying.is_empty() {
+        return free.clone();
+    }
     let m = varying.len();
     let slope: Vec<f64> = varying.iter().map(|v| v.excess(x[v.state]).1).collect();
     let matrix = DMatrix::from_fn(m, m, |r, c| {
