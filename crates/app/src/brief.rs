@@ -4,6 +4,7 @@ use crate::examples;
 use crate::fields::{Quantity, always, field, fields, maybe};
 use crate::pieces::{choice, line, list, one_of, when};
 use crate::state::App;
+use crate::topology::topology;
 use evenfall_engine::design::{Aim, Feed};
 use leptos::prelude::*;
 
@@ -90,8 +91,8 @@ const FEEDS: [(&str, &str, Option<Quantity>); 5] = [
             ),
         )),
     ),
-    ("parallel", "series branch in resonance", None),
-    ("load_independent", "soft at other loads too", None),
+    ("parallel", "found: series branch resonant, X = 0", None),
+    ("load_independent", "found: soft for other loads too", None),
 ];
 
 static QUALITY: [Quantity; 2] = [
@@ -247,9 +248,10 @@ pub(crate) fn brief(app: App) -> AnyView {
             <div class="grid">
                 {fields(app, &STAGE)}
                 <span class="field">{feed_choice(app)}</span>
-                {one_of(move || feed_kind(app), move |kind| FEEDS[kind].2.map(|value| field(app, value)).into_any())}
+                {one_of(move || feed_kind(app), move |kind| FEEDS[kind].2.map(|q| field(app, q)).into_any())}
                 {fields(app, &QUALITY)}
             </div>
+            {topology(app)}
             <p class="starts">{aim_choice(app)}</p>
             {open_load}
             <h3>"Limits"</h3>

@@ -118,6 +118,7 @@ pub(crate) fn device(app: App) -> AnyView {
                 <summary><h3>"Heat and drive"</h3></summary>
                 <div class="grid">{fields(app, &HEAT)}</div>
             </details>
+            {crate::topology::chip(app)}
             {devices(app)}
         </section>
     }

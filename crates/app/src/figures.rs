@@ -20,7 +20,7 @@ pub(crate) fn tidy(value: f64, scale: f64) -> f64 {
 }
 
 /// Something made of the last stage; nothing before there is one.
-fn of_last<T: Default>(app: App, make: fn(App, &Solved) -> T) -> T {
+pub(crate) fn of_last<T: Default>(app: App, make: fn(App, &Solved) -> T) -> T {
     app.last
         .get()
         .map_or_else(T::default, |solved| make(app, &solved))
@@ -370,12 +370,20 @@ fn watt_rows(_: App, s: &Solved) -> Vec<AnyView> {
             l.series_capacitor_w,
             "figure-series_capacitor_w",
         ),
+        (
+            "capacitor between the drains",
+            l.cross_capacitor_w,
+            "figure-cross_capacitor_w",
+        ),
+        ("trap", l.trap_w, "figure-trap_w"),
     ]
     .map(|(name, watts, test)| (name, tidy(watts, f.supply_power_w), test));
     let share = |watts: f64| watts / f.supply_power_w;
     let losses = parts[1..].iter().map(|p| share(p.1));
     let largest = losses.fold(1e-9, f64::max);
-    let rows = parts.iter().enumerate().map(|(k, (name, watts, test))| {
+    // What only some stages have is listed where they have it.
+    let there = |(k, p): &(usize, &(&str, f64, &str))| *k < 10 || p.1 > 0.0;
+    let rows = parts.iter().enumerate().filter(there).map(|(k, (name, watts, test))| {
         let (class, whole) = if k == 0 {
             ("bar carrier", 1.0)
         } else {

@@ -18,7 +18,10 @@ mod shelf;
 mod state;
 mod storage;
 mod studies;
+mod switches;
 mod timing;
+mod topology;
+mod ways;
 
 use leptos::prelude::*;
 
@@ -47,8 +50,10 @@ fn page() -> AnyView {
                 {schematic::schematic(app)}
                 {scope::scope(app)}
                 {figures::spectrum(app)}
+                {switches::switches(app)}
                 {figures::watts(app)}
                 {figures::figures(app)}
+                {ways::ways(app)}
                 {studies::studies(app)}
                 {designs::designs(app)}
             </section>

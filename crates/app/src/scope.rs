@@ -13,8 +13,9 @@ use wasm_bindgen::JsCast;
 
 const HEIGHT: f64 = 132.0;
 
-/// One trace of the scope.
+/// One trace of the scope, with a second curve where there is one.
 struct Trace {
+    other: Option<fn(&Waveforms) -> &[f64]>,
     label: &'static str,
     unit: &'static str,
     values: fn(&Waveforms) -> &[f64],
@@ -24,6 +25,7 @@ struct Trace {
 
 const TRACES: [Trace; 3] = [
     Trace {
+        other: Some(|w| &w.drain_b_v),
         label: "Drain voltage",
         unit: "V",
         values: |w| &w.drain_v,
@@ -31,6 +33,7 @@ const TRACES: [Trace; 3] = [
         dark: RGBColor(244, 162, 120),
     },
     Trace {
+        other: None,
         label: "Switch current",
         unit: "A",
         values: |w| &w.switch_a,
@@ -38,6 +41,7 @@ const TRACES: [Trace; 3] = [
         dark: RGBColor(122, 200, 226),
     },
     Trace {
+        other: None,
         label: "Load voltage",
         unit: "V",
         values: |w| &w.load_v,
@@ -227,15 +231,19 @@ fn draw(
             plane.line(vec![(x, least), (x, most)], ink.mix(0.45), 1.0)?;
         }
     }
-    let points = (0..=periods * count).map(|k| {
-        let within = if k == periods * count {
-            count
-        } else {
-            k % count
-        };
-        (k as f64, values[within])
-    });
-    plane.line(points.collect(), colour.mix(1.0), 1.8)?;
+    let other = trace.other.map_or(&[][..], |other| other(waveforms));
+    // The other side's drain is drawn thinner, beneath.
+    for (curve, width) in [(other, 0.9), (values, 1.8)] {
+        let points = (0..=periods * count).filter_map(|k| {
+            let within = if k == periods * count {
+                count
+            } else {
+                k % count
+            };
+            curve.get(within).map(|value| (k as f64, *value))
+        });
+        plane.line(points.collect(), colour.mix(1.0), width)?;
+    }
     if let Some(k) = cursor {
         let x = k as f64;
         plane.line(vec![(x, least), (x, most)], ink.mix(1.0), 1.0)?;

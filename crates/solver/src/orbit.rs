@@ -215,5 +215,5 @@ fn solve_with(
             }
         };
     }
-    sized!(5, 9, 17)
+    sized!(5, 9)
 }
