@@ -5,12 +5,15 @@
 //!
 //! Layers, each knowing only those above it:
 //! [`quantity`] → [`circuit`] → [`dynamics`] → [`orbit`] → [`design`] → [`stage`] →
-//! [`sizing`] → [`exchange`]; [`parts`] stands beside them and knows [`quantity`] alone.
+//! [`sizing`] → [`exchange`]. Beside the stage, on the circuit alone: [`ac`] → [`network`];
+//! [`parts`] knows [`quantity`] alone.
 #![forbid(unsafe_code)]
 
+pub mod ac;
 pub mod answer;
 pub mod design;
 pub mod exchange;
+pub mod network;
 pub mod parts;
 pub mod quantity;
 pub mod sizing;
