@@ -67,35 +67,48 @@ impl Step {
         let mut from = DMatrix::<f64>::zeros(S * n, n);
         let mut constant = DVector::<f64>::zeros(S * n);
         let mut pull = DMatrix::<f64>::zeros(S * n, m * S);
+        // Of each complex equation the real and the imaginary half, for every column at once:
+        // the start, the charges, the sources.
+        let (count, columns) = (2 * n, n + m + 1);
+        let mut matrix = vec![0.0; count * count];
+        let mut right = vec![0.0; count * columns];
         for e in 0..PAIRS {
-            let eigen = Complex64::new(EIGEN[e].0 * length, EIGEN[e].1 * length);
-            let matrix = DMatrix::from_fn(n, n, |r, c| {
-                let own = if r == c { 1.0 } else { 0.0 };
-                -eigen * a[(r, c)] + own
-            });
-            let inverse = matrix.try_inverse()?;
+            let (re, im) = (EIGEN[e].0 * length, EIGEN[e].1 * length);
+            right.fill(0.0);
+            for r in 0..n {
+                for c in 0..n {
+                    let own = if r == c { 1.0 } else { 0.0 };
+                    matrix[r * count + c] = own - re * a[(r, c)];
+                    matrix[r * count + n + c] = im * a[(r, c)];
+                    matrix[(n + r) * count + c] = -im * a[(r, c)];
+                    matrix[(n + r) * count + n + c] = own - re * a[(r, c)];
+                }
+                right[r * columns + r] = 1.0;
+                for k in 0..m {
+                    right[r * columns + n + k] = lift[(r, k)];
+                }
+                right[r * columns + n + m] = b[r];
+            }
+            if !eliminate(&mut matrix, &mut right, count) {
+                return None;
+            }
             let ahead: Complex64 = (0..S)
                 .map(|j| Complex64::new(IN[e][j].0, IN[e][j].1) * (NODES[j] * length))
                 .sum();
             for r in 0..n {
-                let mut driven = Complex64::new(0.0, 0.0);
-                for c in 0..n {
-                    let g = inverse[(r, c)];
-                    driven += g * b[c];
-                    for (i, out) in OUT[e].iter().enumerate() {
-                        from[(i * n + r, c)] += out.0 * g.re - out.1 * g.im;
-                    }
-                }
-                driven *= ahead;
-                for (i, out) in OUT[e].iter().enumerate() {
-                    constant[i * n + r] += out.0 * driven.re - out.1 * driven.im;
-                }
-                for k in 0..m {
-                    let lifted: Complex64 = (0..n).map(|c| inverse[(r, c)] * lift[(c, k)]).sum();
-                    for j in 0..S {
-                        let g = lifted * Complex64::new(IN[e][j].0, IN[e][j].1);
-                        for (i, out) in OUT[e].iter().enumerate() {
-                            pull[(i * n + r, j * m + k)] += out.0 * g.re - out.1 * g.im;
+                let at =
+                    |c: usize| Complex64::new(right[r * columns + c], right[(n + r) * columns + c]);
+                // The real part of what leaves each node.
+                let out = |i: usize, g: Complex64| OUT[e][i].0 * g.re - OUT[e][i].1 * g.im;
+                let driven = at(n + m) * ahead;
+                for i in 0..S {
+                    let row = i * n + r;
+                    (0..n).for_each(|c| from[(row, c)] += out(i, at(c)));
+                    constant[row] += out(i, driven);
+                    for k in 0..m {
+                        for j in 0..S {
+                            let into = at(n + k) * Complex64::new(IN[e][j].0, IN[e][j].1);
+                            pull[(row, j * m + k)] += out(i, into);
                         }
                     }
                 }
