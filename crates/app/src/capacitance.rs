@@ -14,10 +14,10 @@ use plotters::style::{Color, RGBColor};
 
 /// The kinds: name in the design file and plain words.
 const KINDS: [(&str, &str); 4] = [
-    ("none", "none worth counting"),
+    ("none", "none"),
     ("constant", "constant"),
     ("junction", "junction law"),
-    ("points", "points of the datasheet"),
+    ("points", "datasheet points"),
 ];
 
 static CONSTANT: [Quantity; 1] = [Quantity::needed(

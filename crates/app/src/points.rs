@@ -132,7 +132,7 @@ mod tests {
             ("0 900p\n20 200p\n10 100p", "Line 3", "rise"),
             ("0 900p\n10 -3p", "Line 2", "greater than zero"),
             ("0 900\n10 100", "Line 1", "picofarads"),
-            ("0 900p\n10,5,2,2n\n20,1,2,3n", "Line 3", "commas"),
+            ("0 900p\n10,5,2,2n\n2,1,3n", "Line 3", "commas"),
             ("0 900p", "the capacitance points", "2 to"),
             ("", "the capacitance points", "2 to"),
         ] {

@@ -45,9 +45,20 @@ impl fmt::Display for Wrong {
     }
 }
 
-/// What can be read out of a JSON value.
+/// What can be read out of a JSON value, in place, so that a field costs one call and no more.
 pub(super) trait FromJson: Sized {
-    fn from_json(value: &Value) -> Result<Self, Wrong>;
+    /// What stands there before anything is read.
+    fn blank() -> Self;
+    /// Reads `value` into `self`; the first thing that is wrong is kept, the rest passed over.
+    fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>);
+
+    /// One of them.
+    fn from_json(value: &Value) -> Result<Self, Wrong> {
+        let mut made = Self::blank();
+        let mut wrong = None;
+        made.read(value, &mut wrong);
+        wrong.map_or(Ok(made), Err)
+    }
 }
 
 /// What a value is, for a complaint.
@@ -62,93 +73,85 @@ fn found(value: &Value) -> String {
     }
 }
 
-fn needed<T>(what: &str, value: &Value) -> Result<T, Wrong> {
+fn needed(what: &str, value: &Value, wrong: &mut Option<Wrong>) {
     let found = found(value);
-    Err(Wrong::here(format!("{what} is needed, not {found}")))
+    *wrong = Some(Wrong::here(format!("{what} is needed, not {found}")));
 }
 
-fn object(value: &Value) -> Result<&Map<String, Value>, Wrong> {
-    match value {
-        Value::Object(map) => Ok(map),
-        other => needed("an object", other),
-    }
-}
+type Fields = Map<String, Value>;
 
-/// That every field is a known one and the necessary ones are there.
-fn check(map: &Map<String, Value>, known: &[&str], necessary: &[&str]) -> Result<(), Wrong> {
+/// An object whose every field is a known one and which has the necessary ones.
+fn object<'v>(
+    value: &'v Value,
+    known: &[&str],
+    necessary: &[&str],
+    wrong: &mut Option<Wrong>,
+) -> Option<&'v Fields> {
+    let Value::Object(map) = value else {
+        needed("an object", value, wrong);
+        return None;
+    };
     if let Some(key) = map.keys().find(|key| !known.contains(&key.as_str())) {
         let what = format!("unknown field; known here: {}", known.join(", "));
-        return Err(Wrong::here(what).within(key));
+        *wrong = Some(Wrong::here(what).within(key));
+    } else if let Some(key) = necessary.iter().find(|key| !map.contains_key(**key)) {
+        *wrong = Some(Wrong::here("missing".to_owned()).within(key));
     }
-    match necessary.iter().find(|key| !map.contains_key(**key)) {
-        Some(key) => Err(Wrong::here("missing".to_owned()).within(key)),
-        None => Ok(()),
-    }
+    wrong.is_none().then_some(map)
 }
 
 /// Reads a field into its place where it is there.
-fn take<T: FromJson>(map: &Map<String, Value>, key: &str, place: &mut T) -> Result<(), Wrong> {
-    if let Some(value) = map.get(key) {
-        *place = T::from_json(value).map_err(|wrong| wrong.within(key))?;
-    }
-    Ok(())
-}
-
-/// A field that has to be there.
-fn must<T: FromJson>(map: &Map<String, Value>, key: &str) -> Result<T, Wrong> {
-    let value = map.get(key).unwrap_or(&Value::Null);
-    T::from_json(value).map_err(|wrong| wrong.within(key))
-}
-
-impl FromJson for f64 {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let number = value.as_f64();
-        number.map_or_else(|| needed("a number", value), Ok)
+#[inline(never)]
+fn take<T: FromJson>(map: &Fields, key: &str, place: &mut T, wrong: &mut Option<Wrong>) {
+    if let Some(value) = map.get(key)
+        && wrong.is_none()
+    {
+        place.read(value, wrong);
+        *wrong = wrong.take().map(|wrong| wrong.within(key));
     }
 }
 
-impl FromJson for u32 {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let count = value.as_u64().and_then(|n| Self::try_from(n).ok());
-        count.map_or_else(|| needed("a whole number", value), Ok)
-    }
-}
+/// A plain value by its reader.
+macro_rules! plain {
+    ($type:ty, $what:literal, $read:expr) => {
+        impl FromJson for $type {
+            fn blank() -> Self {
+                Self::default()
+            }
 
-impl FromJson for bool {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let bool = value.as_bool();
-        bool.map_or_else(|| needed("true or false", value), Ok)
-    }
-}
-
-impl FromJson for String {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let text = value.as_str();
-        text.map_or_else(|| needed("a text", value), |text| Ok(text.to_owned()))
-    }
-}
-
-impl FromJson for Vec<f64> {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        match value {
-            Value::Array(list) => list.iter().map(f64::from_json).collect(),
-            other => needed("a list of numbers", other),
+            fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+                let read: fn(&Value) -> Option<$type> = $read;
+                match read(value) {
+                    Some(found) => *self = found,
+                    None => needed($what, value, wrong),
+                }
+            }
         }
-    }
+    };
 }
 
-impl FromJson for [f64; 2] {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let pair = Self::try_from(Vec::from_json(value)?);
-        pair.or_else(|_| needed("a list of two numbers", value))
-    }
+fn numbers(value: &Value) -> Option<Vec<f64>> {
+    value.as_array()?.iter().map(Value::as_f64).collect()
 }
+
+plain!(f64, "a number", Value::as_f64);
+plain!(u32, "a whole number", |v| v.as_u64()?.try_into().ok());
+plain!(bool, "true or false", Value::as_bool);
+plain!(String, "a text", |v| v.as_str().map(str::to_owned));
+plain!(Vec<f64>, "a list of numbers", numbers);
+plain!([f64; 2], "a list of two numbers", |v| numbers(v)?
+    .try_into()
+    .ok());
 
 impl<T: FromJson> FromJson for Option<T> {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        match value {
-            Value::Null => Ok(None),
-            value => T::from_json(value).map(Some),
+    fn blank() -> Self {
+        None
+    }
+
+    fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+        *self = None;
+        if !value.is_null() {
+            self.insert(T::blank()).read(value, wrong);
         }
     }
 }
@@ -157,13 +160,17 @@ impl<T: FromJson> FromJson for Option<T> {
 macro_rules! fields {
     ($type:ident from $start:expr, must [$($must:ident),*], $($field:ident),+ $(,)?) => {
         impl FromJson for $type {
-            fn from_json(value: &Value) -> Result<Self, Wrong> {
-                let map = object(value)?;
-                check(map, &[$(stringify!($field)),+], &[$(stringify!($must)),*])?;
-                let mut made = $start;
-                let Self { $($field),+ } = &mut made;
-                $(take(map, stringify!($field), $field)?;)+
-                Ok(made)
+            fn blank() -> Self {
+                $start
+            }
+
+            fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+                const KNOWN: &[&str] = &[$(stringify!($field)),+];
+                const MUST: &[&str] = &[$(stringify!($must)),*];
+                if let Some(map) = object(value, KNOWN, MUST, wrong) {
+                    let Self { $($field),+ } = self;
+                    $(take(map, stringify!($field), $field, wrong);)+
+                }
             }
         }
     };
@@ -213,109 +220,133 @@ fields!(Fitted from Self::default(), must [],
 fields!(Coil from Self { l_h: 0.0, esr_ohm: None }, must [l_h], l_h, esr_ohm);
 fields!(Capacitor from Self { c_f: 0.0, esr_ohm: None }, must [c_f], c_f, esr_ohm);
 
-/// The one of several words that a text is.
-fn one_of<T: Copy>(value: &Value, words: &[(&str, T)]) -> Result<T, Wrong> {
-    let found = words.iter().find(|(word, _)| value.as_str() == Some(word));
-    found.map(|(_, meant)| *meant).map_or_else(
-        || {
-            let known: Vec<&str> = words.iter().map(|(word, _)| *word).collect();
-            needed(&format!("one of {}", known.join(", ")), value)
-        },
-        Ok,
-    )
-}
-
-impl FromJson for Form {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let words = [
-            ("single", Self::Single),
-            ("differential", Self::Differential),
-        ];
-        one_of(value, &words)
+/// Which of several words a text is.
+fn one_of(value: &Value, words: &[&str], wrong: &mut Option<Wrong>) -> Option<usize> {
+    let text = value.as_str();
+    let at = words.iter().position(|word| text == Some(word));
+    if at.is_none() {
+        needed(&format!("one of {}", words.join(", ")), value, wrong);
     }
+    at
 }
 
-impl FromJson for Aim {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let words = [
-            ("soft_switching", Self::SoftSwitching),
-            ("least_loss", Self::LeastLoss),
-        ];
-        one_of(value, &words)
-    }
+/// A choice among words.
+macro_rules! words {
+    ($type:ident, $($word:literal => $meant:ident),+) => {
+        impl FromJson for $type {
+            fn blank() -> Self {
+                Self::default()
+            }
+
+            fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+                const WORDS: &[(&str, $type)] = &[$(($word, $type::$meant)),+];
+                if let Some(at) = one_of(value, &[$($word),+], wrong) {
+                    *self = WORDS[at].1;
+                }
+            }
+        }
+    };
 }
 
-/// The fields of an object with a kind: the kind's place in the list, whose entries name the
-/// kind and its further fields. No capacitance may have fields: they are passed over, as they
-/// were in files from the beginning.
+words!(Form, "single" => Single, "differential" => Differential);
+words!(Aim, "soft_switching" => SoftSwitching, "least_loss" => LeastLoss);
+
+/// The fields of an object with a kind, and which kind of a list it is.
 fn kind<'v>(
     value: &'v Value,
-    kinds: &[(&str, &[&str])],
-) -> Result<(&'v Map<String, Value>, usize), Wrong> {
-    let map = object(value)?;
-    let words: Vec<(&str, usize)> = kinds.iter().zip(0..).map(|((k, _), at)| (*k, at)).collect();
+    kinds: &[&str],
+    wrong: &mut Option<Wrong>,
+) -> Option<(&'v Fields, usize)> {
+    let Value::Object(map) = value else {
+        needed("an object", value, wrong);
+        return None;
+    };
     let own = map.get("kind").unwrap_or(&Value::Null);
-    let at = one_of(own, &words).map_err(|wrong| wrong.within("kind"))?;
-    let mut known = vec!["kind"];
-    known.extend(kinds[at].1);
-    if kinds[at].0 != "none" {
-        check(map, &known, &[])?;
-    }
-    Ok((map, at))
+    let at = one_of(own, kinds, wrong);
+    *wrong = wrong.take().map(|wrong| wrong.within("kind"));
+    Some((map, at?))
+}
+
+/// The further fields of a kind, all of which must be there.
+macro_rules! kind_fields {
+    ($value:ident, $map:ident, $wrong:ident, $($field:ident),+) => {{
+        const KNOWN: &[&str] = &["kind", $(stringify!($field)),+];
+        object($value, KNOWN, KNOWN, $wrong);
+        $(take($map, stringify!($field), $field, $wrong);)+
+    }};
 }
 
 impl FromJson for Capacitance {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let kinds: [(&str, &[&str]); 4] = [
-            ("none", &[]),
-            ("constant", &["c_f"]),
-            ("junction", &["cj0_f", "built_in_v", "grading"]),
-            ("points", &["v", "c_f"]),
-        ];
-        let (map, kind) = kind(value, &kinds)?;
-        Ok(match kind {
+    fn blank() -> Self {
+        Self::None
+    }
+
+    fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+        let kinds = ["none", "constant", "junction", "points"];
+        let Some((map, at)) = kind(value, &kinds, wrong) else {
+            return;
+        };
+        *self = match at {
+            // It may have other fields: they are passed over, as in files from the beginning.
             0 => Self::None,
-            1 => Self::Constant {
-                c_f: must(map, "c_f")?,
-            },
+            1 => Self::Constant { c_f: 0.0 },
             2 => Self::Junction {
-                cj0_f: must(map, "cj0_f")?,
-                built_in_v: must(map, "built_in_v")?,
-                grading: must(map, "grading")?,
+                cj0_f: 0.0,
+                built_in_v: 0.0,
+                grading: 0.0,
             },
             _ => Self::Points {
-                v: must(map, "v")?,
-                c_f: must(map, "c_f")?,
+                v: Vec::new(),
+                c_f: Vec::new(),
             },
-        })
+        };
+        match self {
+            Self::None => {}
+            Self::Constant { c_f } => kind_fields!(value, map, wrong, c_f),
+            Self::Junction {
+                cj0_f,
+                built_in_v,
+                grading,
+            } => kind_fields!(value, map, wrong, cj0_f, built_in_v, grading),
+            Self::Points { v, c_f } => kind_fields!(value, map, wrong, v, c_f),
+        }
     }
 }
 
 impl FromJson for Feed {
-    fn from_json(value: &Value) -> Result<Self, Wrong> {
-        let kinds: [(&str, &[&str]); 5] = [
-            ("choke", &["reactance_ratio"]),
-            ("resonant", &["q"]),
-            ("inductance", &["l_h"]),
-            ("parallel", &[]),
-            ("load_independent", &[]),
+    fn blank() -> Self {
+        Self::default()
+    }
+
+    fn read(&mut self, value: &Value, wrong: &mut Option<Wrong>) {
+        let kinds = [
+            "choke",
+            "resonant",
+            "inductance",
+            "parallel",
+            "load_independent",
         ];
-        let (map, kind) = kind(value, &kinds)?;
-        Ok(match kind {
-            0 => {
-                let mut choke = Self::default();
-                if let Self::Choke { reactance_ratio } = &mut choke {
-                    take(map, "reactance_ratio", reactance_ratio)?;
-                }
-                choke
-            }
-            1 => Self::Resonant { q: must(map, "q")? },
-            2 => Self::Inductance {
-                l_h: must(map, "l_h")?,
-            },
+        let Some((map, at)) = kind(value, &kinds, wrong) else {
+            return;
+        };
+        *self = match at {
+            0 => Self::default(),
+            1 => Self::Resonant { q: 0.0 },
+            2 => Self::Inductance { l_h: 0.0 },
             3 => Self::Parallel {},
             _ => Self::LoadIndependent {},
-        })
+        };
+        match self {
+            Self::Choke { reactance_ratio } => {
+                object(value, &["kind", "reactance_ratio"], &[], wrong);
+                take(map, "reactance_ratio", reactance_ratio, wrong);
+            }
+            Self::Resonant { q } => kind_fields!(value, map, wrong, q),
+            Self::Inductance { l_h } => kind_fields!(value, map, wrong, l_h),
+            Self::Parallel {} | Self::LoadIndependent {} => {
+                object(value, &["kind"], &[], wrong);
+            }
+        }
     }
 }
 
@@ -454,7 +485,7 @@ mod tests {
             (
                 r#"{"evenfall":1,"brief":{"carrier_hz":1},"stage":{"feed":{"kind":"resonant"}}}"#,
                 "stage.feed.q",
-                "number",
+                "missing",
             ),
             (
                 r#"{"evenfall":1,"brief":{"carrier_hz":1},"stage":{"feed":{"kind":"none"}}}"#,
