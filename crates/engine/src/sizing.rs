@@ -363,7 +363,7 @@ fn settled(design: &Design) -> Result<Sized, SizingError> {
         Ok((stage, reading, notes))
     };
     let ((stage, mut reading, notes), junction_c) =
-        thermal::settle(&problem, trial, |(_, r, _)| r.losses)?;
+        thermal::settle(&problem, trial, |(stage, r, _)| (r.losses, stage))?;
     let figures = &mut reading.figures;
     if problem.device_law.is_some() {
         let constant = Problem {

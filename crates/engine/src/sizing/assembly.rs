@@ -64,6 +64,26 @@ impl Problem {
         }
     }
 
+    /// The point at which a stage lies.
+    pub(super) fn point_of(&self, stage: &Stage) -> Point {
+        let omega = self.omega();
+        let side_ohm = stage.load.r_ohm / self.sides();
+        let device_f = match (&self.stack, &self.device_law) {
+            (Some(stack), _) => stack.drain_f(self.low_f),
+            _ => stage.device_f,
+        };
+        let cross_f = stage.pair.map_or(0.0, |p| p.cross.value);
+        let total_f = device_f + stage.shunt.value + cross_f;
+        let series = omega * stage.series_coil.value - 1.0 / (omega * stage.series_capacitor.value);
+        Point {
+            shunt: omega * total_f * side_ohm,
+            reactance: series / stage.load.r_ohm,
+            load_ohm: stage.load.r_ohm,
+            supply_v: stage.supply_v,
+            feed_q: 1.0 / (omega * (stage.feed.value * total_f).sqrt()),
+        }
+    }
+
     /// Whether the device is more than a switch with a constant capacitance.
     pub(super) fn bends(&self) -> bool {
         self.device_law.is_some() || self.stack.is_some()

@@ -116,7 +116,23 @@ fn size_at(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, SizingEr
         seeks_power,
         seeks_load_range: problem.pins.feed.is_none() && problem.feed == Feed::LoadIndependent {},
     };
-    point = if problem.bends() {
+    let end = if problem.bends() {
+        problem.bent()
+    } else {
+        problem.wanted()
+    };
+    // From a stage sized for nearly the same the way is short.
+    let close = problem.near.as_ref().and_then(|near| {
+        let from = Point {
+            supply_v: point.supply_v,
+            ..problem.point_of(near)
+        };
+        let found = search.newton_within(from, end, STEP_ITERATIONS).ok()?;
+        close_by(&from, found)
+    });
+    point = if let Some(close) = close {
+        close
+    } else if problem.bends() {
         bend(&search, point)?
     } else {
         arrive(&search, point)?
@@ -546,7 +562,7 @@ fn walk(search: &Search<'_>, start: Point, way: impl Fn(f64) -> Way) -> Result<P
         let found = before
             .map(|(earlier, old)| extrapolate(&old, &point, (next - t) / (t - earlier)))
             .and_then(|guess| {
-                near(
+                close_by(
                     &guess,
                     search
                         .newton_within(guess, way(next), STEP_ITERATIONS)
@@ -554,7 +570,7 @@ fn walk(search: &Search<'_>, start: Point, way: impl Fn(f64) -> Way) -> Result<P
                 )
             })
             .or_else(|| {
-                near(
+                close_by(
                     &point,
                     search
                         .newton_within(point, way(next), STEP_ITERATIONS)
@@ -579,7 +595,7 @@ fn walk(search: &Search<'_>, start: Point, way: impl Fn(f64) -> Way) -> Result<P
     Err(Stalled { point, way: way(t) })
 }
 
-fn near(guess: &Point, found: Point) -> Option<Point> {
+fn close_by(guess: &Point, found: Point) -> Option<Point> {
     let far = |a: f64, b: f64| !(1.0 / LONGEST_FACTOR..=LONGEST_FACTOR).contains(&(a / b));
     let jumped = far(found.shunt, guess.shunt)
         || far(found.load_ohm, guess.load_ohm)

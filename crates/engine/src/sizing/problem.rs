@@ -6,7 +6,7 @@ use super::stack::Stack;
 use super::thermal::Thermal;
 use crate::charge::{ChargeLaw, LawError};
 use crate::design::{Capacitance, Coil, Design, Diode, Feed, Form, Load, Mismatch};
-use crate::stage::{Pair, Part};
+use crate::stage::{Pair, Part, Stage};
 
 /// A design, checked, with its unknowns named.
 #[derive(Debug, Clone)]
@@ -38,6 +38,8 @@ pub(super) struct Problem {
     pub(super) thermal: Option<Thermal>,
     pub(super) pins: crate::design::Fitted,
     pub(super) notes: Vec<String>,
+    /// A stage sized for nearly the same, to start from.
+    pub(super) near: Option<Box<Stage>>,
 }
 
 impl Problem {
@@ -245,6 +247,7 @@ impl Problem {
             thermal,
             pins,
             notes,
+            near: None,
         };
         problem.check_fall()?;
         problem.settle_load(brief.load)?;

@@ -14,7 +14,7 @@ const GATE_SHARE: f64 = 0.5;
 /// Shares of the peak are met to this.
 const CLOSE: f64 = 2e-3;
 const MOST_TRIALS: usize = 4;
-const MOST_MOVES: usize = 12;
+const MOST_MOVES: usize = 6;
 
 /// The switches above the lowest.
 #[derive(Debug, Clone, PartialEq)]
@@ -154,6 +154,7 @@ pub(super) fn size(problem: &Problem, notes: &mut Vec<String>) -> Result<Stage, 
     for _ in 0..MOST_TRIALS {
         let mut said = notes.clone();
         let stage = path::size(&trial, &mut said)?;
+        trial.near = Some(Box::new(stage.clone()));
         // The gates are moved on the stage as it is, and it is sized again with what they came to.
         let mut gated = stage.clone();
         let mut first = None;

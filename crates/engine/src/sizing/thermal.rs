@@ -8,6 +8,7 @@
 use super::SizingError;
 use super::problem::Problem;
 use crate::answer::Losses;
+use crate::stage::Stage;
 
 /// Highest temperature that is looked at, degrees Celsius: no semiconductor is left there.
 const HIGHEST_C: f64 = 500.0;
@@ -46,20 +47,23 @@ pub(super) fn device_w(losses: &Losses) -> f64 {
 pub(super) fn settle<T>(
     problem: &Problem,
     mut trial: impl FnMut(&Problem) -> Result<T, SizingError>,
-    losses: impl Fn(&T) -> Losses,
+    losses: impl Fn(&T) -> (Losses, &Stage),
 ) -> Result<(T, Option<f64>), SizingError> {
     let Some(thermal) = problem.thermal else {
         return Ok((trial(problem)?, None));
     };
+    let mut before: Option<Box<Stage>> = None;
     let mut at = |junction_c: f64| {
         let mut warm = problem.clone();
+        warm.near = before.take();
         warm.on_resistance_ohm *= thermal.factor(junction_c);
         for upper in warm.stack.iter_mut().flat_map(|s| &mut s.uppers) {
             upper.on_resistance_ohm *= thermal.factor(junction_c);
         }
         let answer = trial(&warm)?;
-        let rises_to =
-            thermal.ambient_c + thermal.k_per_w * device_w(&losses(&answer)) / problem.sides();
+        let (lost, stage) = losses(&answer);
+        before = Some(Box::new(stage.clone()));
+        let rises_to = thermal.ambient_c + thermal.k_per_w * device_w(&lost) / problem.sides();
         Ok::<_, SizingError>((answer, rises_to))
     };
     let (answer, first) = at(thermal.ambient_c)?;

@@ -36,7 +36,7 @@ const ACCEPTED: f64 = 1e-8;
 /// little of those that follow.
 const KNOTTED: f64 = 1e-2;
 /// And where no law stands in the way of the bound that holds for linear circuits.
-const LINEAR: f64 = 1e-3;
+const LINEAR: f64 = 3e-4;
 
 /// One mode of the circuit.
 struct Mode {
@@ -133,7 +133,7 @@ pub(super) fn solve(
 ) -> Result<Solution, OrbitError> {
     let states = circuit.state_count();
     // Without a varying capacitor the period map is as good as linear, and any start will do.
-    let (start, sizes) = if circuit.laws.is_empty() {
+    let (start, sizes) = if circuit.varying().next().is_none() {
         (vec![0.0; states], vec![0.0; states])
     } else {
         let typical = super::solve_with(&constant(circuit), clock, mirror)?;
@@ -169,7 +169,7 @@ pub(super) fn solve(
         plans: clock.iter().map(|_| Plan::default()).collect(),
         sizes,
         loose: LOOSE,
-        fine: if circuit.laws.is_empty() {
+        fine: if circuit.varying().next().is_none() {
             LINEAR
         } else if circuit.laws.iter().all(ChargeLaw::is_smooth) {
             1.0
