@@ -100,8 +100,14 @@ impl Meter<'_> {
             .mean_product(Probe::Voltage(branch), Probe::Current(branch))
     }
 
-    /// What goes through a side's switches, falling current included.
-    fn side(&self, side: &Side, discharged_w: f64, period_s: f64, closes_s: f64) -> SideFigures {
+    /// What goes through a side's switches, falling current included; and its lowest drain voltage.
+    fn side(
+        &self,
+        side: &Side,
+        discharged_w: f64,
+        period_s: f64,
+        closes_s: f64,
+    ) -> (SideFigures, f64) {
         let through: f64 = side
             .uppers
             .iter()
@@ -109,15 +115,17 @@ impl Meter<'_> {
             .sum();
         let drain = Probe::Voltage(side.drain);
         let closes_s = if closes_s > 0.0 { closes_s } else { period_s };
-        SideFigures {
-            drain_peak_v: self.orbit.extremes(drain).greatest,
+        let range = self.orbit.extremes(drain);
+        let figures = SideFigures {
+            drain_peak_v: range.greatest,
             turn_on_v: self.orbit.before(drain, closes_s).0,
             switch_peak_a: self.orbit.extremes(Probe::Current(side.switch)).greatest,
             switch_rms_a: (self.square(side.switch) + side.fall.map_or(0.0, |b| self.square(b)))
                 .max(0.0)
                 .sqrt(),
             switch_w: self.absorbed(side.switch) + through - discharged_w,
-        }
+        };
+        (figures, range.least)
     }
 }
 
@@ -144,14 +152,16 @@ pub(super) fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: u
         ..Losses::default()
     };
     let mut sides = Vec::with_capacity(2);
+    let mut least_v = f64::MAX;
     for side in &layout.sides {
         let discharged = Discharge::at_turn_on(stage, side, orbit, period_s);
-        let figures = meter.side(
+        let (figures, lowest_v) = meter.side(
             side,
             discharged.in_switch_w,
             period_s,
             side.closes() * period_s,
         );
+        least_v = least_v.min(lowest_v);
         losses.switch_w += figures.switch_w;
         losses.turn_on_w += discharged.total_w;
         losses.turn_off_w += side.fall.map_or(0.0, |b| meter.absorbed(b));
@@ -175,11 +185,6 @@ pub(super) fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: u
             worst
         }
     });
-    let least = layout
-        .sides
-        .iter()
-        .map(|side| orbit.extremes(Probe::Voltage(side.drain)).least)
-        .fold(f64::MAX, f64::min);
     let omega = TAU * stage.carrier_hz;
     let figures = Figures {
         supply_power_w,
@@ -189,7 +194,7 @@ pub(super) fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: u
         drain_efficiency: output_power_w / supply_power_w,
         drain_peak_v: greatest(|s| s.drain_peak_v),
         constant_capacitance_peak_v: None,
-        drain_least_v: least,
+        drain_least_v: least_v,
         switch_peak_a: greatest(|s| s.switch_peak_a),
         switch_rms_a: greatest(|s| s.switch_rms_a),
         turn_on_v: turn_on.0,

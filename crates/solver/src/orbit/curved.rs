@@ -28,7 +28,7 @@ const CALM_AFTER: usize = 15;
 const ANEW_AT: usize = 2;
 /// Iteration from which on the cuts are as fine as they shall be, and before it how much less.
 const FINE_FROM: usize = 3;
-const LOOSE: f64 = 300.0;
+const LOOSE: f64 = 1000.0;
 /// Change of a state over the period, relative to that state, that counts as settled.
 const SETTLED: f64 = 1e-10;
 const ACCEPTED: f64 = 1e-8;
@@ -74,6 +74,8 @@ pub(super) struct Solution {
     pieces: Vec<Piece>,
     switching: Vec<usize>,
     varying: Vec<Varying>,
+    /// The greatest magnitude of each state that was met.
+    sizes: Vec<f64>,
     jump_energy_j: f64,
 }
 
@@ -185,6 +187,7 @@ pub(super) fn solve(
         pieces: lap.pieces,
         switching,
         varying: solver.varying,
+        sizes: solver.sizes,
         jump_energy_j: lap.jump_energy_j,
     })
 }

@@ -143,7 +143,8 @@ impl Solver<'_> {
                 .sum();
             (sum + SPREAD[0] * start[k]) / (1u64 << (2 * S - 1)) as f64
         });
-        let added = &self.modes[mode].a * &last * length;
+        let a = &self.modes[mode].a;
+        let added = |k: usize| length * (0..n).map(|c| a[(k, c)] * last[c]).sum::<f64>();
         let size = |k: usize| {
             let end = nodes.states[(S - 1) * n + k].abs();
             self.sizes[k].max(start[k].abs()).max(end)
@@ -161,7 +162,7 @@ impl Solver<'_> {
                 let size = size(k).max(least);
                 let bound = LAST_TERM * size * self.loose * self.fine + f64::MIN_POSITIVE;
                 let worst = WORST_TERM * size * self.loose.sqrt() + f64::MIN_POSITIVE;
-                (added[k].abs() / bound).max(last[k].abs() / worst)
+                (added(k).abs() / bound).max(last[k].abs() / worst)
             })
             .fold(0.0, f64::max)
     }

@@ -75,7 +75,7 @@ impl Solution {
         let length = share * piece.length;
         let step = Step::new(&mode.a, &mode.b, &mode.lift, &self.varying, length)?;
         let start = piece.states.column(0).into_owned();
-        let nodes = step.solve(&self.varying, &start, None, &self.sizes())?;
+        let nodes = step.solve(&self.varying, &start, None, &self.sizes)?;
         Some(nodes.end(start.len()).into_owned())
     }
 
@@ -83,7 +83,7 @@ impl Solution {
     /// polynomial across, and its slope says where to look next.
     fn turn_within(&self, piece: &Piece, probe: Probe, share: f64, sign: f64) -> Option<f64> {
         const MOST_STEPS: usize = 6;
-        const CLOSE: f64 = 1e-7;
+        const CLOSE: f64 = 1e-4;
         let row = self.row(piece, probe);
         let constant = row.last().copied().unwrap_or(0.0);
         let look = |share: f64| {
@@ -149,13 +149,7 @@ impl Orbit for Solution {
     }
 
     fn sizes(&self) -> Vec<f64> {
-        let mut sizes = vec![0.0f64; self.start().len()];
-        for column in self.pieces.iter().flat_map(|p| p.states.column_iter()) {
-            for (size, x) in sizes.iter_mut().zip(column.iter()) {
-                *size = size.max(x.abs());
-            }
-        }
-        sizes
+        self.sizes.clone()
     }
 
     fn mean_product(&self, first: Probe, second: Probe) -> f64 {

@@ -69,16 +69,21 @@ impl Step {
         let mut pull = DMatrix::<f64>::zeros(S * n, m * S);
         // Of each complex equation the real and the imaginary half, for every column at once:
         // the start, the charges, the sources.
-        let (count, columns) = (2 * n, n + m + 1);
-        let mut matrix = vec![0.0; count * count];
-        let mut right = vec![0.0; count * columns];
+        let columns = n + m + 1;
+        let mut matrix = vec![0.0; 4 * n * n];
+        let mut right = vec![0.0; 2 * n * columns];
         for e in 0..PAIRS {
             let (re, im) = (EIGEN[e].0 * length, EIGEN[e].1 * length);
+            // A real eigenvalue has no imaginary half.
+            let count = if im == 0.0 { n } else { 2 * n };
             right.fill(0.0);
             for r in 0..n {
                 for c in 0..n {
                     let own = if r == c { 1.0 } else { 0.0 };
                     matrix[r * count + c] = own - re * a[(r, c)];
+                    if im == 0.0 {
+                        continue;
+                    }
                     matrix[r * count + n + c] = im * a[(r, c)];
                     matrix[(n + r) * count + c] = -im * a[(r, c)];
                     matrix[(n + r) * count + n + c] = own - re * a[(r, c)];
@@ -89,7 +94,11 @@ impl Step {
                 }
                 right[r * columns + n + m] = b[r];
             }
-            if !eliminate(&mut matrix, &mut right, count) {
+            if !eliminate(
+                &mut matrix[..count * count],
+                &mut right[..count * columns],
+                count,
+            ) {
                 return None;
             }
             let ahead: Complex64 = (0..S)
