@@ -8,28 +8,28 @@ use crate::state::App;
 use evenfall_engine::design::Diode;
 use leptos::prelude::*;
 
-static SWITCH: [Quantity; 2] = [
-    Quantity::needed(
-        "on_resistance",
-        "On-resistance",
-        "Ω",
-        always!(device.on_resistance_ohm),
+/// Hidden where it follows from the width.
+static RESISTANCE: [Quantity; 1] = [Quantity::needed(
+    "on_resistance",
+    "On-resistance",
+    "Ω",
+    always!(device.on_resistance_ohm),
+)];
+
+static SWITCH: [Quantity; 1] = [Quantity::optional(
+    "diode_v",
+    "Body diode, forward (empty: none)",
+    "V",
+    (
+        |d| d.device.diode.map(|x| x.forward_v),
+        |d, v| {
+            d.device.diode = v.map(|forward_v| Diode {
+                forward_v,
+                slope_ohm: d.device.diode.map_or(0.05, |x| x.slope_ohm),
+            });
+        },
     ),
-    Quantity::optional(
-        "diode_v",
-        "Body diode, forward (empty: none)",
-        "V",
-        (
-            |d| d.device.diode.map(|x| x.forward_v),
-            |d, v| {
-                d.device.diode = v.map(|forward_v| Diode {
-                    forward_v,
-                    slope_ohm: d.device.diode.map_or(0.05, |x| x.slope_ohm),
-                });
-            },
-        ),
-    ),
-];
+)];
 
 static SLOPE: [Quantity; 1] = [Quantity::needed(
     "diode_slope",
@@ -103,11 +103,16 @@ pub(crate) fn device(app: App) -> AnyView {
         move || app.design.with(|d| d.device.diode.is_some()),
         move || fields(app, &SLOPE),
     );
+    let resistance = when(
+        move || app.design.with(|d| d.device.per_width.is_none()),
+        move || fields(app, &RESISTANCE),
+    );
     let (capacitance, curve) = capacitance(app);
     view! {
         <section class="card">
             <h2>"Switch"</h2>
             <div class="grid">
+                {resistance}
                 {fields(app, &SWITCH)}
                 {slope}
                 {fields(app, &RATINGS)}

@@ -10,8 +10,8 @@ pub(crate) const ALL: [(&str, &str); 5] = [
         "e=1&n=bench+generator&le=0.85&lh=-20&lt=125&fr=10&ql=200&qc=1000&ck=constant&c=90e-12&vf=0.8&rf=0.05&ron=0.12&ra=15&rv=220&device.on_resistance_per_k=0.007&device.fall_time_s=2e-9&device.gate_charge_c=12e-9&device.gate_drive_v=10&device.junction_to_ambient_k_per_w=20",
     ),
     (
-        "Transmitter on a chip, 433.92 MHz (single-ended)",
-        "e=1&n=chip+transmitter&f=433.92e6&p=0.1&v=1.2&lv=1&le=0.5&q=3&fk=resonant&fq=1.412&ql=14&qc=60&ck=constant&c=2.5e-12&ron=0.4&rv=5",
+        "Transmitter on a chip, 433.92 MHz (differential, by width)",
+        "e=1&n=chip+transmitter&f=433.92e6&p=0.1&v=1.2&lv=1&le=0.5&q=3&fk=resonant&fq=1.2&ql=14&qc=60&rv=5&stage.form=differential&stage.cross_share=0.5&device.gate_drive_v=1.2&device.per_width.on_resistance_ohm_m=8e-4&device.per_width.output_f_per_m=5e-10&device.per_width.gate_f_per_m=1e-9",
     ),
     (
         "Energy to a moving coil, 6.78 MHz 10 W",

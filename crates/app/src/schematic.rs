@@ -188,18 +188,18 @@ fn pair(app: App) -> AnyView {
             <circle cx="190" cy="120" r="3"/>
             <circle cx="460" cy="120" r="3"/>
             {cross}
-            <text x="282" y="20" class="name">"Supply"</text>
+            <text x="262" y="20" class="name">"Supply"</text>
             {text("value", 332, 20, shown(app, |s| volt(s.values.supply_v)))}
             {label(app, 0, 118, 64, "L1 feed, each")}
-            <text x="2" y="236" class="name">"Switch, each"</text>
+            <text x="2" y="236" class="name">"Switches"</text>
             {text("value", 2, 253, live(move || switch_value(app)))}
             {text("state", 2, 268, live(move || switch_words(app)))}
             {label(app, 1, 212, 214, "C1 shunt, each")}
             {label(app, 2, 232, 66, "L2 series")}
             {label(app, 3, 316, 66, "C2 series")}
-            {label(app, 4, 392, 66, "Load")}
-            {peak(app, 2, 100)}
-            {text("watt", 392, 152, shown(app, |s| quantity::format(s.figures.output_power_w, "W")))}
+            {label(app, 4, 398, 66, "Load")}
+            {peak(app, 2, 148)}
+            {text("watt", 376, 152, shown(app, |s| quantity::format(s.figures.output_power_w, "W")))}
         </svg>
     }
     .into_any()

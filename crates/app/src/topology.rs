@@ -191,7 +191,7 @@ const FIRST: PerWidth = PerWidth {
 fn form_choice(app: App) -> AnyView {
     let options = [
         ("single", "one switch"),
-        ("differential", "two switches, half a period apart"),
+        ("differential", "differential pair"),
     ]
     .map(|(value, words)| (value.to_owned(), words));
     let now = move || {
