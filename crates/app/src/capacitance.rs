@@ -258,7 +258,14 @@ pub(crate) fn capacitance(app: App) -> (AnyView, AnyView) {
         now,
         Box::new(choose),
     );
-    let own = view! { <span class="field">{choice}</span>{own} };
+    let refused = live(move || app.refused("capacitance_at"));
+    let own = view! {
+        <span class="field">
+            {choice}
+            <span class="problem" role="status" data-test="refused-capacitance_at">{refused}</span>
+        </span>
+        {own}
+    };
     (own.into_any(), curve.into_any())
 }
 

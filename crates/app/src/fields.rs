@@ -308,6 +308,7 @@ pub(crate) fn field(app: App, quantity: Quantity) -> AnyView {
         <span class="field" title=hint>
             <label for=id>{label}</label>
             {input(typing, own)}
+            <span class="problem" role="status" data-test=format!("refused-{name}")>{live(move || app.refused(name))}</span>
             {slide}
         </span>
     }

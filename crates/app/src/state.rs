@@ -72,6 +72,18 @@ impl App {
         }
     }
 
+    /// What the engine refuses about the field of this name.
+    pub(crate) fn refused(&self, name: &str) -> String {
+        match &*self.answer.get() {
+            Answer::Refused(refusal)
+                if refusal.field.as_deref().is_some_and(|f| is_at(f, name)) =>
+            {
+                refusal.reason.clone()
+            }
+            _ => String::new(),
+        }
+    }
+
     /// A feed coil with which there would be a stage, where the design is refused for want of it.
     pub(crate) fn offer(&self) -> Option<Feed> {
         match &*self.answer.get() {
@@ -79,6 +91,31 @@ impl App {
             Answer::Solved(_) => None,
         }
     }
+}
+
+/// Whether a path of the design file is that of a field; most fields bear its last word.
+fn is_at(path: &str, name: &str) -> bool {
+    let last = path.rsplit('.').next().unwrap_or(path);
+    let own = match last {
+        "power_w" => "power",
+        "carrier_hz" => "carrier",
+        "supply_v" => "supply",
+        "load" if path.starts_with("brief") => "load",
+        "ambient_c" => "ambient",
+        "feed" if path.starts_with("stage") => "feed_value",
+        "mismatch" => "mismatch_duty",
+        "per_width" => "width",
+        "upper" => "upper_f",
+        "on_resistance_ohm" => "on_resistance",
+        "on_resistance_per_k" => "per_k",
+        "junction_to_ambient_k_per_w" => "thermal",
+        "fall_time_s" => "fall_time",
+        "gate_charge_c" => "gate_charge",
+        "diode" => "diode_v",
+        "capacitance" => "capacitance_at",
+        other => other,
+    };
+    own == name
 }
 
 fn from_address() -> (Design, Vec<String>) {

@@ -83,6 +83,7 @@ fn a_stack_that_cannot_be_is_refused_and_one_that_can_is_shown() {
         "the refusal",
         "return document.querySelector('[data-test=summary]').innerText.includes('1 to 4 switches')",
     );
+    assert!(text(&browser, "[data-test=refused-stack]").contains("1 to 4 switches"));
     set("2");
     browser.wait(
         "the stack",
