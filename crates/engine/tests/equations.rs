@@ -252,8 +252,9 @@ fn any_number_of_states_is_solved() {
         (4, 1e-11),
         (5, 1e-11),
         (8, 1e-11),
+        (9, 1e-11),
         // Beyond these by steps, as where a charge law is followed.
-        (9, 1e-9),
+        (10, 1e-9),
         (16, 1e-9),
         (20, 1e-9),
         (40, 1e-9),

@@ -215,5 +215,5 @@ fn solve_with(
             }
         };
     }
-    sized!(5, 9)
+    sized!(5, 10)
 }
