@@ -167,7 +167,7 @@ fn pair(app: App) -> AnyView {
         },
     );
     view! {
-        <svg class="schematic" viewBox="0 0 650 290" role="img" aria-label="Differential class-E stage: supply through a feed coil to each of two drains; a switch and a shunt capacitor from each drain to ground; series coil, series capacitor and load between the drains. Values are in the table of elements.">
+        <svg class="schematic" viewBox="-26 0 650 290" role="img" aria-label="Differential class-E stage: supply through a feed coil to each of two drains; a switch and a shunt capacitor from each drain to ground; series coil, series capacitor and load between the drains. Values are in the table of elements.">
             <g class="wire">
                 // Supply and feed coils.
                 <path d="M100 30H550M100 30V44M550 30V44M100 104V120M550 104V120"/>
@@ -191,14 +191,14 @@ fn pair(app: App) -> AnyView {
             <text x="262" y="20" class="name">"Supply"</text>
             {text("value", 332, 20, shown(app, |s| volt(s.values.supply_v)))}
             {label(app, 0, 118, 64, "L1 feed, each")}
-            <text x="2" y="236" class="name">"Switches"</text>
-            {text("value", 2, 253, live(move || switch_value(app)))}
-            {text("state", 2, 268, live(move || switch_words(app)))}
+            <text x="-24" y="236" class="name">"Switches"</text>
+            {text("value", -24, 253, live(move || switch_value(app)))}
+            {text("state", -24, 268, live(move || switch_words(app)))}
             {label(app, 1, 212, 214, "C1 shunt, each")}
             {label(app, 2, 232, 66, "L2 series")}
             {label(app, 3, 316, 66, "C2 series")}
             {label(app, 4, 398, 66, "Load")}
-            {peak(app, 2, 148)}
+            {peak(app, -24, 148)}
             {text("watt", 376, 152, shown(app, |s| quantity::format(s.figures.output_power_w, "W")))}
         </svg>
     }
