@@ -220,7 +220,7 @@ fn figure_list(app: App, s: &Solved) -> Vec<Figure> {
             "balance",
             "Power not accounted for",
             Some(format!("{:.0e}", s.balance.abs())),
-            "The solve's own check, relative; above 1e-9 it is refused.",
+            "The solve's own check, relative; above 1e-9 (1e-6 where a capacitance depends on its voltage) it is refused.",
         ),
         (
             "junction_c",

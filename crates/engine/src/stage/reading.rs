@@ -177,14 +177,11 @@ pub(super) fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: u
         sides.push(figures);
     }
     let greatest = |of: fn(&SideFigures) -> f64| sides.iter().map(of).fold(f64::MIN, f64::max);
-    let turn_on = sides.iter().fold((0.0, 0), |worst: (f64, usize), side| {
-        let (v, count) = worst;
-        if count == 0 || side.turn_on_v.abs() > v.abs() {
-            (side.turn_on_v, count + 1)
-        } else {
-            worst
-        }
-    });
+    let turn_on_v = sides
+        .iter()
+        .map(|s| s.turn_on_v)
+        .max_by(|a, b| a.abs().total_cmp(&b.abs()))
+        .unwrap_or(0.0);
     let omega = TAU * stage.carrier_hz;
     let figures = Figures {
         supply_power_w,
@@ -197,7 +194,7 @@ pub(super) fn read(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, highest: u
         drain_least_v: least_v,
         switch_peak_a: greatest(|s| s.switch_peak_a),
         switch_rms_a: greatest(|s| s.switch_rms_a),
-        turn_on_v: turn_on.0,
+        turn_on_v,
         turn_on_slope_v_per_s: orbit.before_end(drain).1,
         loaded_q: omega * stage.series_coil.value / stage.load.r_ohm,
         diode_fraction: first.diode.map_or(0.0, |b| orbit.conducting_fraction(b)),
@@ -243,15 +240,21 @@ fn detail(stage: &Stage, layout: &Layout, orbit: &dyn Orbit, sides: Vec<SideFigu
         let mut nodes: Vec<usize> = vec![side.switch];
         nodes.extend(side.uppers.iter().skip(1).filter_map(|u| u.node));
         nodes.push(side.drain);
-        let clamps = std::iter::once(0.0).chain(stage.uppers.iter().map(|u| u.clamp_v));
+        // Clamp and gate voltage: the lowest gate is at 0 V while its switch is open.
+        let gates = std::iter::once((0.0, 0.0)).chain(
+            stage
+                .uppers
+                .iter()
+                .map(|u| (u.clamp_v, u.clamp_v + stage.threshold_v)),
+        );
         let across = std::iter::once(side.switch).chain(side.uppers.iter().map(|u| u.across));
         detail.stack = nodes
             .into_iter()
             .zip(across)
-            .zip(clamps)
-            .map(|((node, across), clamp_v)| SwitchStress {
+            .zip(gates)
+            .map(|((node, across), (clamp_v, gate_v))| SwitchStress {
                 drain_source_v: peak(across),
-                drain_gate_v: peak(node) - clamp_v - stage.threshold_v * f64::from(clamp_v > 0.0),
+                drain_gate_v: peak(node) - gate_v,
                 clamp_v,
             })
             .collect();

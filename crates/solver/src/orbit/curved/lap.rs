@@ -8,7 +8,7 @@ use crate::orbit::{ClockStep, OrbitError};
 use nalgebra::{DMatrix, DVector};
 
 const MOST_EVENTS: usize = 64;
-const MOST_STEPS: usize = 4000;
+const MOST_STEPS: usize = 1000;
 /// Shortest step, as a share of its stretch.
 const LEAST_SHARE: f64 = 1e-14;
 /// How coarse a step counts whose equations were not solved.
