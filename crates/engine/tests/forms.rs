@@ -4,6 +4,9 @@
 //! Zulinski, K.J. Grady, IEEE Trans. CAS-37(8), 1990; KC06 Z. Kaczmarczyk, IEEE Trans. Ind.
 //! Electron. 53(5), 2006 (all values from memory of the cited papers, recomputed).
 
+mod common;
+
+use common::{near, solved};
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::design::{Capacitance, Design, Feed, Form, Mismatch, PerWidth, Upper};
 use evenfall_engine::exchange::link;
@@ -21,22 +24,6 @@ fn unit(loaded_q: f64) -> Design {
     design.brief.load.r_ohm = 1.0;
     design.stage.loaded_q = loaded_q;
     design
-}
-
-#[track_caller]
-fn solved(design: &Design) -> Solved {
-    match solve(design) {
-        Answer::Solved(solved) => solved,
-        Answer::Refused(refusal) => panic!("refused: {}", refusal.reason),
-    }
-}
-
-#[track_caller]
-fn near(what: &str, value: f64, want: f64, relative: f64) {
-    assert!(
-        (value / want - 1.0).abs() <= relative,
-        "{what}: {value} against {want}"
-    );
 }
 
 #[test]

@@ -6,6 +6,9 @@
 //! Sokal, Switchmode RF Power Amplifiers, 2007 (from memory, recomputed); RS78 F.H. Raab,
 //! N.O. Sokal, IEEE JSSC SC-13(6), 1978 (from memory, recomputed).
 
+mod common;
+
+use common::{near, solved};
 use evenfall_engine::answer::{Answer, Solved};
 use evenfall_engine::design::{
     Brief, Capacitor, Coil, Design, Device, Feed, Limits, Load, StageChoice,
@@ -43,22 +46,6 @@ fn unit_design(duty: f64, loaded_q: f64, feed: Feed) -> Design {
 
 fn choke(reactance_ratio: f64) -> Feed {
     Feed::Choke { reactance_ratio }
-}
-
-#[track_caller]
-fn solved(design: &Design) -> Solved {
-    match solve(design) {
-        Answer::Solved(solved) => solved,
-        Answer::Refused(refusal) => panic!("refused: {}", refusal.reason),
-    }
-}
-
-#[track_caller]
-fn near(what: &str, value: f64, want: f64, relative: f64) {
-    assert!(
-        (value / want - 1.0).abs() <= relative,
-        "{what}: {value} against {want}"
-    );
 }
 
 /// Net series reactance of a unit design.

@@ -1,6 +1,8 @@
 //! What the browser tests stand on: a server of dist/ and a small WebDriver client (W3C
 //! WebDriver over plain HTTP).
 
+use evenfall_engine::design::Design;
+use evenfall_engine::exchange::link;
 use serde_json::{Value, json};
 use std::io::{BufRead, BufReader, Read, Write};
 use std::net::TcpStream;
@@ -14,6 +16,9 @@ pub use xtask::site::Site;
 pub fn dist() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("../../dist")
 }
+
+/// True once the page shows an answer.
+pub const READY: &str = "return !!document.querySelector('[data-test=\"figure-output_power_w\"]')";
 
 /// A server of the finished page.
 pub fn page() -> Site {
@@ -183,6 +188,15 @@ impl Browser {
     /// lets go of the keys.
     pub fn type_into(&self, test: &str, text: &str) {
         self.send_keys(test, &format!("\u{E009}a\u{E000}{text}"));
+    }
+
+    /// The design that the address holds, once it has come to rest.
+    pub fn design(&self) -> Design {
+        std::thread::sleep(Duration::from_millis(400));
+        let hash = self.script("return location.hash");
+        let (design, problems) = link::read(hash.as_str().expect("a fragment"));
+        assert!(problems.is_empty(), "{problems:?}");
+        design
     }
 
     /// Loads the page anew and waits until the old one is gone.

@@ -1,23 +1,13 @@
 //! The switch on the page: capacitance that depends on voltage, the offered feed coil, and the
 //! shelf of devices.
 
-use evenfall_browser_tests::{Browser, page};
-use evenfall_engine::design::{Capacitance, Design, Feed};
-use evenfall_engine::exchange::{file, link};
+use evenfall_browser_tests::{Browser, READY, page};
+use evenfall_engine::design::{Capacitance, Feed};
+use evenfall_engine::exchange::file;
 use evenfall_engine::{answer::Answer, solve};
 use serde_json::json;
 
-const READY: &str = "return !!document.querySelector('[data-test=\"figure-output_power_w\"]')";
 const JUNCTION: &str = "e=1&ck=junction&device.capacitance.cj0_f=9e-10&device.capacitance.built_in_v=0.8&device.capacitance.grading=0.5&ron=0.12&fk=resonant&fq=1.3";
-
-/// The design that the address holds, once it has come to rest.
-fn design(browser: &Browser) -> Design {
-    std::thread::sleep(std::time::Duration::from_millis(400));
-    let hash = browser.script("return location.hash");
-    let (design, problems) = link::read(hash.as_str().expect("a fragment"));
-    assert!(problems.is_empty(), "{problems:?}");
-    design
-}
 
 /// Puts a text into a field at once, as pasting does.
 fn paste(browser: &Browser, test: &str, text: &str) {
@@ -66,8 +56,8 @@ fn pasted_points_are_solved_and_a_wrong_row_is_named() {
         v: vec![0.0, 10.5, 48.0, 200.0],
         c_f: vec![900e-12, 2.2e-10, 120e-12, 60e-12],
     };
-    assert_eq!(design(&browser).device.capacitance, table);
-    let Answer::Solved(solved) = solve(&design(&browser)) else {
+    assert_eq!(browser.design().device.capacitance, table);
+    let Answer::Solved(solved) = solve(&browser.design()) else {
         panic!("a stage");
     };
     let constant = solved.figures.constant_capacitance_peak_v.expect("it");
@@ -87,11 +77,11 @@ fn pasted_points_are_solved_and_a_wrong_row_is_named() {
         "the complaint",
         "return document.getElementById('field-points-problem').textContent.includes('Line 4')",
     );
-    assert_eq!(design(&browser).device.capacitance, table);
+    assert_eq!(browser.design().device.capacitance, table);
     choose(&browser, "junction");
     choose(&browser, "points");
     assert_eq!(value(&browser, "field-points"), wrong);
-    assert_eq!(design(&browser).device.capacitance, table);
+    assert_eq!(browser.design().device.capacitance, table);
     assert_eq!(browser.console_errors(), Vec::<String>::new());
 }
 
@@ -103,29 +93,29 @@ fn changing_the_kind_and_back_loses_nothing() {
     browser.wait("the page", READY);
     assert_eq!(value(&browser, "field-capacitance_kind"), "junction");
     browser.type_into("field-grading", "0.44");
-    let before = design(&browser);
+    let before = browser.design();
     // Each other kind starts from the same energy, so that there still is a stage.
     for kind in ["constant", "points", "none"] {
         choose(&browser, kind);
-        let other = design(&browser);
+        let other = browser.design();
         assert_ne!(other.device.capacitance, before.device.capacitance);
         assert!(matches!(solve(&other), Answer::Solved(_)), "{kind}");
     }
     choose(&browser, "junction");
-    assert_eq!(design(&browser), before);
+    assert_eq!(browser.design(), before);
     // A long table survives the address.
     choose(&browser, "points");
     let rows: String = (0..200)
         .map(|k| format!("{k};{}p\n", 500 - 2 * k))
         .collect();
     paste(&browser, "field-points", &rows);
-    let long = design(&browser);
+    let long = browser.design();
     browser.reload();
     browser.wait(
         "the page",
         "return !!document.querySelector('[data-test=field-points]')",
     );
-    assert_eq!(design(&browser), long);
+    assert_eq!(browser.design(), long);
     assert_eq!(value(&browser, "field-points").lines().count(), 200);
 }
 
@@ -148,7 +138,7 @@ fn the_offered_feed_coil_is_taken_with_one_press() {
         "the stage",
         "return !document.querySelector('[data-test=summary]').textContent.startsWith('No such stage')",
     );
-    let taken = design(&browser);
+    let taken = browser.design();
     assert!(matches!(taken.stage.feed, Feed::Resonant { .. }));
     assert!(matches!(solve(&taken), Answer::Solved(_)));
     assert_eq!(value(&browser, "field-feed_kind"), "resonant");
@@ -162,7 +152,7 @@ fn devices_are_kept_used_removed_and_exchanged() {
     browser.wait("the page", READY);
     browser.press("devices");
     browser.type_into("field-device_name", "own switch");
-    let own = design(&browser);
+    let own = browser.design();
     browser.press("device-save");
     browser.wait(
         "the message",
@@ -171,13 +161,13 @@ fn devices_are_kept_used_removed_and_exchanged() {
     assert_eq!(count(&browser), 1);
     // Another one is taken; the brief stays, and there is a way back.
     press_words(&browser, "60 V");
-    let other = design(&browser);
+    let other = browser.design();
     assert_eq!((&other.brief, &other.stage), (&own.brief, &own.stage));
     assert!(other.device.name.contains("60 V"));
     browser.press("device-back");
-    assert_eq!(design(&browser), own);
+    assert_eq!(browser.design(), own);
     press_words(&browser, "own switch");
-    assert_eq!(design(&browser), own);
+    assert_eq!(browser.design(), own);
     // Deleted and back.
     press_words(&browser, "delete own switch");
     assert_eq!(count(&browser), 0);
@@ -194,7 +184,7 @@ fn devices_are_kept_used_removed_and_exchanged() {
     browser.press("device-import");
     browser.wait("three", "return Object.keys(localStorage).filter(k => k.startsWith('evenfall/1/device/')).length === 3");
     press_words(&browser, "own switch 2");
-    let mut again = design(&browser).device;
+    let mut again = browser.design().device;
     again.name.clone_from(&own.device.name);
     assert_eq!(again, own.device);
     // An unknown field is named and nothing is stored.
@@ -222,7 +212,7 @@ fn every_invented_device_makes_a_stage_of_a_brief_of_its_kind() {
         browser.wait("the page", READY);
         browser.press("devices");
         press_words(&browser, name);
-        match solve(&design(&browser)) {
+        match solve(&browser.design()) {
             Answer::Solved(solved) => {
                 let unmet = solved.verdicts.iter().find(|v| !v.met);
                 assert!(unmet.is_none(), "{name}: {unmet:?}");
@@ -262,6 +252,6 @@ fn devices_that_cannot_be_read_stay_and_blocked_storage_is_said() {
     );
     // What comes with the page can still be taken.
     press_words(&blocked, "200 V");
-    assert_eq!(design(&blocked).device.rating_v, Some(200.0));
+    assert_eq!(blocked.design().device.rating_v, Some(200.0));
     assert_eq!(blocked.console_errors(), Vec::<String>::new());
 }

@@ -1,19 +1,8 @@
 //! The form of the stage on the page: pairs, stacks, widths, and other ways to meet a brief.
 
-use evenfall_browser_tests::{Browser, page};
-use evenfall_engine::design::{Design, Feed, Form};
-use evenfall_engine::exchange::link;
+use evenfall_browser_tests::{Browser, READY, page};
+use evenfall_engine::design::{Feed, Form};
 use evenfall_engine::{answer::Answer, solve};
-
-const READY: &str = "return !!document.querySelector('[data-test=\"figure-output_power_w\"]')";
-
-fn design(browser: &Browser) -> Design {
-    std::thread::sleep(std::time::Duration::from_millis(400));
-    let hash = browser.script("return location.hash");
-    let (design, problems) = link::read(hash.as_str().expect("a fragment"));
-    assert!(problems.is_empty(), "{problems:?}");
-    design
-}
 
 fn choose(browser: &Browser, test: &str, value: &str) {
     browser.script(&format!(
@@ -36,13 +25,13 @@ fn changing_the_form_keeps_the_brief_and_shows_each_switch() {
         site.address
     ));
     browser.wait("the page", READY);
-    let before = design(&browser);
+    let before = browser.design();
     choose(&browser, "field-form", "differential");
     browser.wait(
         "both sides",
         "return document.querySelectorAll('[data-test=sides] tbody tr').length === 2",
     );
-    let pair = design(&browser);
+    let pair = browser.design();
     assert_eq!(pair.stage.form, Form::Differential);
     assert_eq!(pair.brief, before.brief);
     assert_eq!(pair.device, before.device);
@@ -117,7 +106,7 @@ fn other_ways_are_compared_and_taken_over() {
         assert!(all.contains(way), "{way} in {all}");
     }
     browser.script("[...document.querySelectorAll('[data-test=take-way]')].find(b => b.getAttribute('aria-label').includes('X = 0')).click()");
-    let taken = design(&browser);
+    let taken = browser.design();
     assert_eq!(taken.stage.feed, Feed::Parallel {});
     assert_eq!(taken.brief.power_w, Some(60.0));
 }

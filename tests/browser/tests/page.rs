@@ -2,20 +2,13 @@
 
 #![allow(clippy::print_stderr, reason = "figures for the log")]
 
-use evenfall_browser_tests::{Browser, dist, page};
+use evenfall_browser_tests::{Browser, READY, dist, page};
 use evenfall_engine::answer::{Answer, Solved};
-use evenfall_engine::exchange::link;
 use evenfall_engine::{quantity, solve};
-
-const READY: &str = "return !!document.querySelector('[data-test=\"figure-output_power_w\"]')";
 
 /// The engine's own answer to the design that the address holds.
 fn native(browser: &Browser) -> Solved {
-    std::thread::sleep(std::time::Duration::from_millis(400));
-    let hash = browser.script("return location.hash");
-    let (design, problems) = link::read(hash.as_str().expect("a fragment"));
-    assert!(problems.is_empty(), "{problems:?}");
-    match solve(&design) {
+    match solve(&browser.design()) {
         Answer::Solved(solved) => solved,
         Answer::Refused(refusal) => panic!("{}", refusal.reason),
     }
