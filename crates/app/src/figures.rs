@@ -288,6 +288,15 @@ fn tick(x: f64, y: f64, text: String) -> AnyView {
     view! { <text class="tick" x=x y=y text-anchor="middle">{text}</text> }.into_any()
 }
 
+/// Decibels relative to the carrier; what cancels to rounding is none.
+pub(crate) fn decibels(dbc: f64, digits: usize) -> String {
+    if dbc < -150.0 {
+        "none".to_owned()
+    } else {
+        format!("{dbc:.digits$}")
+    }
+}
+
 fn harmonic_bars(_: App, s: &Solved) -> Vec<AnyView> {
     const FLOOR: f64 = -80.0;
     let mut bars = Vec::new();
@@ -298,7 +307,7 @@ fn harmonic_bars(_: App, s: &Solved) -> Vec<AnyView> {
         let tall = height.max(0.5).to_string();
         bars.push(view! { <rect class="bar" x=left y=top width="22" height=tall/> }.into_any());
         bars.push(tick(x + 11.0, 166.0, (k + 2).to_string()));
-        bars.push(tick(x + 11.0, 144.0 - height, format!("{dbc:.1}")));
+        bars.push(tick(x + 11.0, 144.0 - height, decibels(*dbc, 1)));
     }
     bars
 }
@@ -309,7 +318,7 @@ fn harmonic_rows(_: App, s: &Solved) -> Vec<AnyView> {
         .enumerate()
         .map(|(k, (dbc, volt))| {
             let cells = vec![
-                number(format!("{dbc:.2} dBc")),
+                number(decibels(*dbc, 2)),
                 number(quantity::format(*volt, "V")),
             ];
             row("", None, (k + 2).to_string(), cells)
@@ -332,7 +341,7 @@ pub(crate) fn spectrum(app: App) -> AnyView {
             <p class="origin">"dBc by order of harmonic; the carrier is 0 dBc, the foot of the bars -80 dBc."</p>
             <details>
                 <summary>"Harmonics 2 to 20 as figures"</summary>
-                <table><thead><tr><th scope="col">"Order"</th><th scope="col" class="number">"Load current"</th><th scope="col" class="number">"Drain voltage"</th></tr></thead>
+                <table><thead><tr><th scope="col">"Order"</th><th scope="col" class="number">"Load current, dBc"</th><th scope="col" class="number">"Drain voltage"</th></tr></thead>
                 <tbody>{list(move || of_last(app, harmonic_rows))}</tbody></table>
             </details>
         </section>

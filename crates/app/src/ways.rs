@@ -1,6 +1,6 @@
 //! Other ways to meet the brief, side by side, each sized for it.
 
-use crate::figures::per_cent;
+use crate::figures::{decibels, per_cent};
 use crate::pieces::{button, list, live, named_button, number, press};
 use crate::state::App;
 use evenfall_engine::design::Design;
@@ -38,11 +38,7 @@ fn line(app: App, way: &Alternative) -> AnyView {
             .get(k)
             .copied()
             .unwrap_or(f64::NEG_INFINITY);
-        number(if dbc < -150.0 {
-            "none".to_owned()
-        } else {
-            format!("{dbc:.1}")
-        })
+        number(decibels(dbc, 1))
     };
     let design = way.design.clone();
     let take = press(move || app.replace(design.clone()));
